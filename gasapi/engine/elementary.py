@@ -1,0 +1,156 @@
+"""Exponential, logarithm and square root that give the same bits for a float and for an element of an array.
+
+``+ - * /`` and the square root are correctly rounded, so Python and NumPy agree on them to the last bit. ``math.exp`` and
+``numpy.exp`` do not agree, nor do ``**`` and any sum over an axis. The engine therefore uses only the five safe
+operations, in a written order, and the functions of this module, which are themselves built from the five.
+
+The exponential splits x = (256 k + j) ln2 / 256 + r and takes 2^(j/256) from a table and exp(r) from a polynomial; the
+logarithm splits off the exponent and the nearest multiple of 1/128 and takes the rest from the series of the inverse
+hyperbolic tangent (both after Tang, ACM Trans. Math. Softw. 15 (1989) 144 and 16 (1990) 378, with tables of our own).
+Largest error seen against 40-digit arithmetic: below 1 unit in the last place for either.
+"""
+
+from __future__ import annotations
+
+import math
+from fractions import Fraction
+from typing import TypeVar, cast
+
+import numpy as np
+from numpy.typing import NDArray
+
+__all__ = ["Array", "Real", "exp", "log", "maximum", "minimum", "power", "sqrt"]
+
+Array = NDArray[np.float64]
+"""A one-dimensional block of numbers."""
+
+Real = TypeVar("Real", float, Array)
+"""A float or a block: what goes in comes out."""
+
+_STEPS = 256
+_SCALE = _STEPS / math.log(2.0)
+# ln2/256 in two parts: the first holds 28 bits only, so that its product with an index of 18 bits is exact
+_LN2_256_HIGH = float.fromhex("0x1.62e42fep-9")
+_LN2_256_LOW = float(Fraction("0.693147180559945309417232121458176568075500134360255254120680") / 256 - Fraction(_LN2_256_HIGH))
+# adding and taking away this number rounds to the nearest integer, in Python and NumPy alike
+_ROUND = 6755399441055744.0
+_EXP_LOWEST = -708.0
+_EXP_HIGHEST = 709.0
+_POWER_OF_TWO = [math.ldexp(1.0, k) for k in range(-1022, 1024)]
+_POWER_OF_TWO_ARRAY = np.array(_POWER_OF_TWO)
+_ROOTS_OF_TWO = [2.0 ** (j / _STEPS) for j in range(_STEPS)]
+_ROOTS_OF_TWO_ARRAY = np.array(_ROOTS_OF_TWO)
+
+_LN2_HIGH = _LN2_256_HIGH * 256.0
+_LN2_LOW = _LN2_256_LOW * 256.0
+_LOG_TABLE = [0.0] + [math.log(c / 128.0) for c in range(1, 257)]
+_LOG_TABLE_ARRAY = np.array(_LOG_TABLE)
+
+
+def exp(x: Real) -> Real:
+    """Return e to the power of x, [-]; arguments are held within -708 and 709, so that no result is 0 or infinite.
+
+    :param x: exponent, a float or an array of any shape, [-]
+    """
+    if type(x) is float:
+        x = x if x > _EXP_LOWEST else _EXP_LOWEST
+        x = x if x < _EXP_HIGHEST else _EXP_HIGHEST
+        k = (x * _SCALE + _ROUND) - _ROUND
+        r = (x - k * _LN2_256_HIGH) - k * _LN2_256_LOW
+        index = int(k)
+        root = _ROOTS_OF_TWO[index & 255]
+        rest = r + r * r * (0.5 + r * (0.16666666666666666 + r * 0.041666666666666664))
+        return (root + root * rest) * _POWER_OF_TWO[(index >> 8) + 1022]
+    return cast(Real, _exp_block(cast(Array, x)))
+
+
+def _exp_block(x: Array) -> Array:
+    x = np.minimum(np.maximum(x, _EXP_LOWEST), _EXP_HIGHEST)
+    k = x * _SCALE
+    k += _ROUND
+    k -= _ROUND
+    r = x - k * _LN2_256_HIGH
+    r -= k * _LN2_256_LOW
+    index = k.astype(np.int64)
+    root = _ROOTS_OF_TWO_ARRAY.take(index & 255)
+    rest = r * 0.041666666666666664
+    rest += 0.16666666666666666
+    rest *= r
+    rest += 0.5
+    rest *= r * r
+    rest += r
+    rest *= root
+    rest += root
+    index >>= 8
+    index += 1022
+    rest *= _POWER_OF_TWO_ARRAY.take(index)
+    return rest
+
+
+def log(x: Real) -> Real:
+    """Return the natural logarithm of x, [-].
+
+    :param x: a positive, normal number, a float or an array of any shape, [-]
+    """
+    if type(x) is float:
+        mantissa, exponent = math.frexp(x)
+        if mantissa < 0.7071067811865476:
+            mantissa *= 2.0
+            exponent -= 1
+        nearest = (mantissa * 128.0 + _ROUND) - _ROUND
+        c = nearest * 0.0078125
+        s = (mantissa - c) / (mantissa + c)
+        s2 = s * s
+        series = 2.0 * s + s * s2 * (0.6666666666666666 + s2 * (0.4 + s2 * 0.2857142857142857))
+        return (exponent * _LN2_HIGH + _LOG_TABLE[int(nearest)]) + (series + exponent * _LN2_LOW)
+    return cast(Real, _log_block(cast(Array, x)))
+
+
+def _log_block(x: Array) -> Array:
+    mantissa, exponent = np.frexp(x)
+    small = mantissa < 0.7071067811865476
+    mantissa = np.where(small, mantissa * 2.0, mantissa)
+    power_of_two = (exponent - small).astype(np.float64)
+    nearest = (mantissa * 128.0 + _ROUND) - _ROUND
+    c = nearest * 0.0078125
+    s = (mantissa - c) / (mantissa + c)
+    s2 = s * s
+    series = 2.0 * s + s * s2 * (0.6666666666666666 + s2 * (0.4 + s2 * 0.2857142857142857))
+    return (power_of_two * _LN2_HIGH + _LOG_TABLE_ARRAY.take(nearest.astype(np.int64))) + (
+        series + power_of_two * _LN2_LOW
+    )
+
+
+def power(x: Real, exponent: float) -> Real:
+    """Return x to a fixed power, [-], as exp(exponent * log(x)).
+
+    The relative error grows as abs(exponent * log(x)) units in the last place; use products for whole exponents.
+
+    :param x: a positive, normal number, a float or an array of any shape, [-]
+    :param exponent: the power, [-]
+    """
+    return exp(exponent * log(x))
+
+
+def sqrt(x: Real) -> Real:
+    """Return the square root of x, correctly rounded, [-].
+
+    :param x: zero or a positive number, a float or an array of any shape, [-]
+    """
+    if type(x) is float:
+        return math.sqrt(x)
+    return cast(Real, np.sqrt(x))
+
+
+def maximum(x: Real, bound: float) -> Real:
+    """Return x, or the bound where x is below it."""
+    if type(x) is float:
+        return x if x > bound else bound
+    return cast(Real, np.maximum(x, bound))
+
+
+def minimum(x: Real, bound: float) -> Real:
+    """Return x, or the bound where x is above it."""
+    if type(x) is float:
+        return x if x < bound else bound
+    return cast(Real, np.minimum(x, bound))
