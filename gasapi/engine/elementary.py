@@ -60,12 +60,14 @@ def exp(x: Real) -> Real:
         index = int(k)
         root = _ROOTS_OF_TWO[index & 255]
         rest = r + r * r * (0.5 + r * (0.16666666666666666 + r * 0.041666666666666664))
-        return (root + root * rest) * _POWER_OF_TWO[(index >> 8) + 1022]
+        scale: float = _POWER_OF_TWO[(index >> 8) + 1022]
+        return (root + root * rest) * scale
     return cast(Real, _exp_block(cast(Array, x)))
 
 
 def _exp_block(x: Array) -> Array:
-    x = np.minimum(np.maximum(x, _EXP_LOWEST), _EXP_HIGHEST)
+    # fmax and fmin, since they turn NaN into a bound as the comparisons on floats do
+    x = np.fmin(np.fmax(x, _EXP_LOWEST), _EXP_HIGHEST)
     k = x * _SCALE
     k += _ROUND
     k -= _ROUND
@@ -116,9 +118,7 @@ def _log_block(x: Array) -> Array:
     s = (mantissa - c) / (mantissa + c)
     s2 = s * s
     series = 2.0 * s + s * s2 * (0.6666666666666666 + s2 * (0.4 + s2 * 0.2857142857142857))
-    return (power_of_two * _LN2_HIGH + _LOG_TABLE_ARRAY.take(nearest.astype(np.int64))) + (
-        series + power_of_two * _LN2_LOW
-    )
+    return (power_of_two * _LN2_HIGH + _LOG_TABLE_ARRAY.take(nearest.astype(np.int64))) + (series + power_of_two * _LN2_LOW)
 
 
 def power(x: Real, exponent: float) -> Real:

@@ -97,7 +97,7 @@ class Fluid(ABC):
 
     @abstractmethod
     def residual_gibbs(self, temperature: Real, density: Real) -> Real:
-        """Return g_res/(R T) = alpha_r + Z - 1 - ln Z, [-]: the residual Gibbs energy against the ideal gas at the same T and p.
+        """Return g_res/(R T) = alpha_r + Z - 1 - ln Z, [-], against the ideal gas at the same T and p.
 
         For a pure gas this is ln(phi), with phi the fugacity coefficient.
 
