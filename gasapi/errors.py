@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-__all__ = ["GasapiError", "ModelCannotServe", "UnknownGas", "UnknownModel"]
+__all__ = ["FractionsInvalid", "GasapiError", "ModelCannotServe", "UnknownGas", "UnknownModel"]
 
 
 class GasapiError(Exception):
@@ -38,3 +38,12 @@ class ModelCannotServe(GasapiError):
         self.gas = gas
         self.why = why
         super().__init__(f"{model} cannot serve {gas}: {why}")
+
+
+class FractionsInvalid(GasapiError):
+    """Fractions that make no gas; ``component`` names the one at fault where there is one."""
+
+    def __init__(self, why: str, component: str | None) -> None:
+        self.why = why
+        self.component = component
+        super().__init__(why)

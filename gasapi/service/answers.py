@@ -7,7 +7,16 @@ from __future__ import annotations
 
 from typing import NamedTuple
 
-__all__ = ["GasAnswer", "ModelAnswer", "PhaseAnswer", "PhasePart", "QualityAnswer", "StateAnswer", "TwoPhaseAnswer", "Warning"]
+__all__ = [
+    "GasAnswer",
+    "ModelAnswer",
+    "PhaseAnswer",
+    "PhasePart",
+    "PhaseWarning",
+    "QualityAnswer",
+    "StateAnswer",
+    "TwoPhaseAnswer",
+]
 
 
 class GasAnswer(NamedTuple):
@@ -18,7 +27,7 @@ class GasAnswer(NamedTuple):
     molar_mass: float
 
 
-class Warning(NamedTuple):
+class PhaseWarning(NamedTuple):
     """A phase warning: a snake_case code and a sentence. The numbers in the sentence carry their own units."""
 
     code: str
@@ -33,7 +42,7 @@ class PhaseAnswer(NamedTuple):
     margin_temperature: float | None
     margin_pressure: float | None
     model: str | None
-    warnings: tuple[Warning, ...]
+    warnings: tuple[PhaseWarning, ...]
 
 
 class ModelAnswer(NamedTuple):
