@@ -92,6 +92,13 @@ class Table:
             raise self.fault(key, "must be a list of texts that are not empty")
         return tuple(value)
 
+    def texts_by_key(self, key: str) -> dict[str, str]:
+        """Return a table of texts, whatever its members are called."""
+        table = self.table(key)
+        texts = {name: table.text(name) for name in table.members}
+        table.close()
+        return texts
+
     def number(self, key: str, low: float = -math.inf, high: float = math.inf) -> float:
         """Return a finite number within ``low`` and ``high``, both included."""
         return self._number(key, self._take(key), low, high)
@@ -111,6 +118,25 @@ class Table:
         """Return a finite number above zero, or None where the member is absent or null."""
         return self.positive(key) if self.has(key) else None
 
+    def sourced_number(
+        self, key: str, sources: Mapping[str, str], low: float = -math.inf, high: float = math.inf
+    ) -> tuple[float, str]:
+        """Return a number and the words of its source, from a list ``[number, source]`` or ``[number, source, [more]]``.
+
+        :param sources: words by key; ``more`` names further ones that the first one speaks of
+        """
+        value = self._take(key)
+        if not isinstance(value, list) or len(value) not in (2, 3):
+            raise self.fault(key, "must be a list of a number and the key of its source")
+        keys = [value[1], *(value[2] if len(value) == 3 and isinstance(value[2], list) else value[2:])]
+        for name in keys:
+            if not isinstance(name, str) or name not in sources:
+                raise self.fault(key, f"names the source {name!r}; sources: {', '.join(sources)}")
+        words = sources[keys[0]]
+        if len(keys) > 1:
+            words += f": {'; '.join(sources[name] for name in keys[1:])}"
+        return self._number(key, value[0], low, high), words
+
     def whole(self, key: str) -> int:
         """Return an integer."""
         value = self._take(key)
@@ -128,6 +154,13 @@ class Table:
     def numbers(self, key: str) -> tuple[float, ...]:
         """Return a list of finite numbers that is not empty."""
         return self._numbers(key, self._take(key))
+
+    def two_numbers(self, key: str) -> tuple[float, float]:
+        """Return a list of exactly two finite numbers."""
+        value = self.numbers(key)
+        if len(value) != 2:
+            raise self.fault(key, f"has {len(value)} numbers, must have 2")
+        return value[0], value[1]
 
     def rows(self, key: str, width: int) -> tuple[tuple[float, ...], ...]:
         """Return a list, not empty, of rows of ``width`` finite numbers."""

@@ -47,8 +47,8 @@ class Substance:
 
     ``molar_mass`` kg/mol, ``critical_temperature`` K, ``critical_pressure`` Pa, ``acentric_factor`` [-],
     ``critical_volume`` m3/mol or None, ``dipole_moment`` debye or None. ``grade`` A to D rates the constants (see the data
-    note), ``flags`` holds any of quantum, associating, decomposes. ``triple_temperature`` K and ``triple_pressure`` Pa, or None;
-    ``melting_temperature`` K near 1 bar where no triple point is known.
+    note), ``flags`` holds any of quantum, associating, decomposes. ``triple_temperature`` K and ``triple_pressure`` Pa, or
+    None; ``melting_temperature`` K near 1 bar where no triple point is known.
     """
 
     id: str
@@ -70,11 +70,15 @@ class Hazard:
     """Hazard tags (flammable, toxic, corrosive, oxidizer, asphyxiant, pyrophoric) with their basis, and figures.
 
     ``figures`` maps a name such as ``lower_flammable_limit`` to a Constant. A missing tag means not known, never safe.
+    ``carcinogen_group`` is the IARC group 1, 2A or 2B; ``remarks`` are sentences of common practice.
     """
 
     tags: tuple[str, ...] = ()
     basis: tuple[tuple[str, str], ...] = ()
     figures: tuple[tuple[str, Constant], ...] = ()
+    carcinogen_group: str | None = None
+    absorbed_through_skin: bool = False
+    remarks: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,7 +86,9 @@ class Gas:
     """A catalogue entry: a pure gas, or a named blend of catalogue gases.
 
     ``substance`` is None for a blend; ``blend`` is None for a pure gas and else (gas id, mole fraction) pairs that sum to 1.
-    ``kind`` is ``pure``, ``blend`` or ``site``. ``constants`` maps critical_temperature, ... to Constants in the units of the record.
+    ``kind`` is ``pure``, ``blend`` or ``site``. ``constants`` maps critical_temperature, ... to Constants, each with its own
+    unit. ``mass_fractions`` are the fractions as given, where a site file gave them by mass; ``blend`` then holds them
+    converted with the molar masses of the catalogue.
     """
 
     id: str
@@ -96,6 +102,7 @@ class Gas:
     constants: tuple[tuple[str, Constant], ...] = ()
     hazard: Hazard = field(default_factory=Hazard)
     description: str = ""
+    mass_fractions: tuple[tuple[str, float], ...] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -145,8 +152,8 @@ class ResidualTerm:
     ``gaussian``             (eta, epsilon, beta, gamma)      F = exp(-eta (delta - epsilon)^2), G = exp(-beta (tau - gamma)^2)
     ``gaussian_reciprocal``  (eta, epsilon, beta, gamma, b)   F as gaussian, G = exp(1 / (beta (tau - gamma)^2 + b))
     ``density_gaussian``     (eta, epsilon, beta, gamma)      F = exp(-eta (delta - epsilon)^2 - beta (delta - gamma))
-    ``nonanalytic``          (a, b, beta, A, B, C, D)         n Delta^b delta exp(-C (delta-1)^2 - D (tau-1)^2), see nonanalytic.py;
-                                                              d and t are not used
+    ``nonanalytic``          (a, b, beta, A, B, C, D)         n Delta^b delta exp(-C (delta-1)^2 - D (tau-1)^2), see
+                                                              nonanalytic.py; d and t are not used
     """
 
     kind: str
@@ -209,8 +216,8 @@ class SublimationCurve:
 class ReferenceEquation:
     """The published multiparameter equation of one gas.
 
-    ``gas_constant`` J/mol/K and ``molar_mass`` kg/mol are those of the publication; ``critical`` is where the equation itself has
-    zero slope and curvature, ``critical_published`` the accepted point. ``kind`` is pure or pseudo-pure (air).
+    ``gas_constant`` J/mol/K and ``molar_mass`` kg/mol are those of the publication; ``critical`` is where the equation itself
+    has zero slope and curvature, ``critical_published`` the accepted point. ``kind`` is pure or pseudo-pure (air).
     """
 
     id: str
