@@ -37,6 +37,10 @@ class ResolvedGas:
     scaled: bool
     site: bool = False
 
+    def __hash__(self) -> int:
+        # the long substance records follow from the components, or are compared when two gases meet in one slot
+        return hash((self.components, self.shares, self.basis))
+
     @property
     def is_pure(self) -> bool:
         """Whether there is one component only."""
@@ -69,7 +73,7 @@ def resolve_gas(spec: GasSpec, catalogue: Catalogue) -> ResolvedGas:
             return _pure(substance.id, substance, None, False)
         gas = catalogue.find(spec.name)
         if gas.substance is not None:
-            return _pure(gas.id, gas.substance, catalogue.reference_id(gas.id), catalogue.is_gerg_component(gas.id))
+            return _pure(gas.id, gas.substance, catalogue.reference_id(gas.id), catalogue.gerg_component(gas.id))
         return _mixture(gas.id, _spread(gas, 1.0, catalogue), "mole", False, catalogue, own, gas.kind == "site")
     return _from_fractions(spec, catalogue, own)
 
@@ -106,7 +110,7 @@ def _from_fractions(spec: GasSpec, catalogue: Catalogue, own: dict[str, Substanc
             return _pure(only, substance, None, False, scaled)
         gas = catalogue.find(only)
         assert gas.substance is not None
-        return _pure(only, gas.substance, catalogue.reference_id(only), catalogue.is_gerg_component(only), scaled)
+        return _pure(only, gas.substance, catalogue.reference_id(only), catalogue.gerg_component(only), scaled)
     return _mixture(None, parts, spec.basis, scaled, catalogue, own, False)
 
 
@@ -142,7 +146,7 @@ def _mixture(
     site: bool,
 ) -> ResolvedGas:
     # one order whatever the order of the request, so that the same composition has the same bits
-    components = tuple(sorted(parts, key=catalogue.order))
+    components = tuple(sorted(parts))
     substances = tuple(own.get(c.casefold()) or catalogue.substance(c) for c in components)
     return ResolvedGas(
         id,
@@ -151,7 +155,7 @@ def _mixture(
         basis,
         substances,
         catalogue.reference_id(id) if id is not None else None,
-        all(c.casefold() not in own and catalogue.is_gerg_component(c) for c in components),
+        all(c.casefold() not in own and catalogue.gerg_component(c) for c in components),
         scaled,
         site,
     )
