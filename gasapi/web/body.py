@@ -1,0 +1,67 @@
+"""The bytes of a request body, within a limit whether or not the length was announced."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from gasapi.web.negotiation import JSON, content_type
+from gasapi.web.problems import Problem
+
+__all__ = ["announced_length", "read_body", "require_json"]
+
+_PIECE = 256 * 1024
+
+Environ = dict[str, Any]
+
+
+def announced_length(environ: Environ) -> int | None:
+    """Return the length that a request announces for its body, None where it comes in chunks."""
+    if environ.get("HTTP_TRANSFER_ENCODING"):
+        return None
+    text = environ.get("CONTENT_LENGTH") or "0"
+    return int(text) if text.isascii() and text.isdigit() else 0
+
+
+def read_body(environ: Environ, limit: int) -> bytes:
+    """Return the body of a request.
+
+    :param limit: bytes that it may have
+    :raises Problem: 400 where the body ends before its announced length; 413 where it is longer than the limit
+    """
+    stream = environ["wsgi.input"]
+    length = announced_length(environ)
+    if length is not None:
+        if length > limit:
+            raise _too_large(limit)
+        body: bytes = stream.read(length) if length else b""
+        if len(body) < length:
+            raise Problem(400, f"the body ends after {len(body)} of the {length} bytes that were announced")
+        return body
+    pieces, held = [], 0
+    while piece := stream.read(min(_PIECE, limit + 1 - held)):
+        held += len(piece)
+        if held > limit:
+            raise _too_large(limit)
+        pieces.append(piece)
+    return b"".join(pieces)
+
+
+def require_json(environ: Environ) -> None:
+    """Check that a request says that its body is JSON in UTF-8, as it stands.
+
+    :raises Problem: 415 where it does not
+    """
+    given = environ.get("CONTENT_TYPE", "")
+    kind = content_type(given)
+    if kind is None or (kind.type, kind.subtype) != (JSON.type, JSON.subtype):
+        what = "no Content-Type" if not given else f"Content-Type: {given[:100]}"
+        raise Problem(415, f"the request has {what}; send the question with Content-Type: application/json")
+    if dict(kind.parameters).get("charset", "utf-8") != "utf-8":
+        raise Problem(415, "JSON is UTF-8 here; leave the charset out")
+    encoding = environ.get("HTTP_CONTENT_ENCODING", "identity").strip().lower()
+    if encoding not in ("", "identity"):
+        raise Problem(415, "the body is compressed; send it as it stands", headers=[("Accept-Encoding", "identity")])
+
+
+def _too_large(limit: int) -> Problem:
+    return Problem(413, f"the body is larger than the {limit} bytes that are taken here; split the question")
