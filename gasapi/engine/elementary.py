@@ -28,21 +28,24 @@ Real = TypeVar("Real", float, Array)
 """A float or a block: what goes in comes out."""
 
 _STEPS = 256
-_SCALE = _STEPS / math.log(2.0)
+SCALE = _STEPS / math.log(2.0)
 # ln2/256 in two parts: the first holds 28 bits only, so that its product with an index of 18 bits is exact
-_LN2_256_HIGH = float.fromhex("0x1.62e42fep-9")
-_LN2_256_LOW = float(Fraction("0.693147180559945309417232121458176568075500134360255254120680") / 256 - Fraction(_LN2_256_HIGH))
+STEP_HIGH = float.fromhex("0x1.62e42fep-9")
+STEP_LOW = float(Fraction("0.693147180559945309417232121458176568075500134360255254120680") / 256 - Fraction(STEP_HIGH))
 # adding and taking away this number rounds to the nearest integer, in Python and NumPy alike
-_ROUND = 6755399441055744.0
-_EXP_LOWEST = -708.0
-_EXP_HIGHEST = 709.0
-_POWER_OF_TWO = [math.ldexp(1.0, k) for k in range(-1022, 1024)]
-_POWER_OF_TWO_ARRAY = np.array(_POWER_OF_TWO)
-_ROOTS_OF_TWO = [2.0 ** (j / _STEPS) for j in range(_STEPS)]
-_ROOTS_OF_TWO_ARRAY = np.array(_ROOTS_OF_TWO)
+ROUND = 6755399441055744.0
+# coefficients of r^3 and r^4 in exp(r), beyond 1 + r + r^2/2
+EXP_COEFFICIENTS = (0.16666666666666666, 0.041666666666666664)
+_C3, _C4 = EXP_COEFFICIENTS
+EXP_LOWEST = -708.0
+EXP_HIGHEST = 709.0
+POWERS_OF_TWO = [math.ldexp(1.0, k) for k in range(-1022, 1024)]
+_POWERS_ARRAY = np.array(POWERS_OF_TWO)
+ROOTS_OF_TWO = [2.0 ** (j / _STEPS) for j in range(_STEPS)]
+_ROOTS_ARRAY = np.array(ROOTS_OF_TWO)
 
-_LN2_HIGH = _LN2_256_HIGH * 256.0
-_LN2_LOW = _LN2_256_LOW * 256.0
+_LN2_HIGH = STEP_HIGH * 256.0
+_LN2_LOW = STEP_LOW * 256.0
 _LOG_TABLE = [0.0] + [math.log(c / 128.0) for c in range(1, 257)]
 _LOG_TABLE_ARRAY = np.array(_LOG_TABLE)
 
@@ -53,30 +56,30 @@ def exp(x: Real) -> Real:
     :param x: exponent, a float or an array of any shape, [-]
     """
     if type(x) is float:
-        x = x if x > _EXP_LOWEST else _EXP_LOWEST
-        x = x if x < _EXP_HIGHEST else _EXP_HIGHEST
-        k = (x * _SCALE + _ROUND) - _ROUND
-        r = (x - k * _LN2_256_HIGH) - k * _LN2_256_LOW
+        x = x if x > EXP_LOWEST else EXP_LOWEST
+        x = x if x < EXP_HIGHEST else EXP_HIGHEST
+        k = (x * SCALE + ROUND) - ROUND
+        r = (x - k * STEP_HIGH) - k * STEP_LOW
         index = int(k)
-        root = _ROOTS_OF_TWO[index & 255]
-        rest = r + r * r * (0.5 + r * (0.16666666666666666 + r * 0.041666666666666664))
-        scale: float = _POWER_OF_TWO[(index >> 8) + 1022]
+        root = ROOTS_OF_TWO[index & 255]
+        rest = r + r * r * (0.5 + r * (_C3 + r * _C4))
+        scale: float = POWERS_OF_TWO[(index >> 8) + 1022]
         return (root + root * rest) * scale
     return cast(Real, _exp_block(cast(Array, x)))
 
 
 def _exp_block(x: Array) -> Array:
     # fmax and fmin, since they turn NaN into a bound as the comparisons on floats do
-    x = np.fmin(np.fmax(x, _EXP_LOWEST), _EXP_HIGHEST)
-    k = x * _SCALE
-    k += _ROUND
-    k -= _ROUND
-    r = x - k * _LN2_256_HIGH
-    r -= k * _LN2_256_LOW
+    x = np.fmin(np.fmax(x, EXP_LOWEST), EXP_HIGHEST)
+    k = x * SCALE
+    k += ROUND
+    k -= ROUND
+    r = x - k * STEP_HIGH
+    r -= k * STEP_LOW
     index = k.astype(np.int64)
-    root = _ROOTS_OF_TWO_ARRAY.take(index & 255)
-    rest = r * 0.041666666666666664
-    rest += 0.16666666666666666
+    root = _ROOTS_ARRAY.take(index & 255)
+    rest = r * _C4
+    rest += _C3
     rest *= r
     rest += 0.5
     rest *= r * r
@@ -85,7 +88,7 @@ def _exp_block(x: Array) -> Array:
     rest += root
     index >>= 8
     index += 1022
-    rest *= _POWER_OF_TWO_ARRAY.take(index)
+    rest *= _POWERS_ARRAY.take(index)
     return rest
 
 
@@ -99,7 +102,7 @@ def log(x: Real) -> Real:
         if mantissa < 0.7071067811865476:
             mantissa *= 2.0
             exponent -= 1
-        nearest = (mantissa * 128.0 + _ROUND) - _ROUND
+        nearest = (mantissa * 128.0 + ROUND) - ROUND
         c = nearest * 0.0078125
         s = (mantissa - c) / (mantissa + c)
         s2 = s * s
@@ -113,7 +116,7 @@ def _log_block(x: Array) -> Array:
     small = mantissa < 0.7071067811865476
     mantissa = np.where(small, mantissa * 2.0, mantissa)
     power_of_two = (exponent - small).astype(np.float64)
-    nearest = (mantissa * 128.0 + _ROUND) - _ROUND
+    nearest = (mantissa * 128.0 + ROUND) - ROUND
     c = nearest * 0.0078125
     s = (mantissa - c) / (mantissa + c)
     s2 = s * s

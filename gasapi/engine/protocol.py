@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from gasapi.engine.elementary import Real
 
-__all__ = ["Branch", "CriticalPoint", "Fluid", "PressureDerivatives", "Root", "Status"]
+__all__ = ["Branch", "CriticalPoint", "Fluid", "PressureDerivatives", "Root", "Solution", "Status"]
 
 
 class Branch(IntEnum):
@@ -54,6 +54,13 @@ class PressureDerivatives(NamedTuple, Generic[Real]):
     pressure: Real
     density_derivative: Real
     temperature_derivative: Real
+
+
+class Solution(NamedTuple):
+    """A density root of one state with the pressure derivatives there, None where there is no root."""
+
+    root: Root[float]
+    derivatives: PressureDerivatives[float] | None
 
 
 class CriticalPoint(NamedTuple):
@@ -104,3 +111,17 @@ class Fluid(ABC):
         :param temperature: K, a float or an array of shape (n,)
         :param density: mol/m3, of the same kind and shape
         """
+
+    def solve(self, temperature: float, pressure: float, branch: Branch) -> Solution:
+        """Return the density root of one state and the derivatives there, with the bits of ``density`` and ``pressure``.
+
+        An equation overrides this where the two can share work.
+
+        :param temperature: K
+        :param pressure: Pa
+        :param branch: the branch
+        """
+        root = self.density(temperature, pressure, branch)
+        if root.status != Status.CONVERGED:
+            return Solution(root, None)
+        return Solution(root, self.pressure(temperature, root.density))

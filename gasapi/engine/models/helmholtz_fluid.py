@@ -11,8 +11,8 @@ from numpy.typing import NDArray
 
 from gasapi.engine.density import solve_block, solve_float
 from gasapi.engine.elementary import Array, Real, log
-from gasapi.engine.helmholtz import TermSum
-from gasapi.engine.protocol import Branch, Fluid, PressureDerivatives, Root
+from gasapi.engine.helmholtz import Isotherm, TermSum
+from gasapi.engine.protocol import Branch, Fluid, PressureDerivatives, Root, Solution
 
 __all__ = ["BLOCK_ROWS", "HelmholtzFluid"]
 
@@ -57,12 +57,37 @@ class HelmholtzFluid(Fluid):
         return cast("Root[Real]", Root(np.concatenate([part.density for part in parts]), status))
 
     def _density_float(self, temperature: float, pressure: float, branch: Branch) -> Root[float]:
+        isotherm = self._energy.isotherm(self.reducing_temperature / temperature)
+        return self._root_float(isotherm, temperature, pressure, branch)
+
+    def _root_float(
+        self, isotherm: Isotherm[float], temperature: float, pressure: float, branch: Branch
+    ) -> Root[float]:
         rho_r = self.reducing_density
         start, low, high, guarded = self._search_float(temperature, pressure, branch)
         target = pressure / (rho_r * self.gas_constant * temperature)
-        isotherm = self._energy.isotherm(self.reducing_temperature / temperature)
         root = solve_float(isotherm, target, start / rho_r, low / rho_r, high / rho_r, guarded)
         return Root(root.density * rho_r, root.status)
+
+    def solve(self, temperature: float, pressure: float, branch: Branch) -> Solution:
+        """Return root and derivatives of one state from one isotherm; see ``Fluid.solve``."""
+        isotherm, slope = self._energy.with_slopes(self.reducing_temperature / temperature)
+        root = self._root_float(isotherm, temperature, pressure, branch)
+        if root.status != 0:
+            return Solution(root, None)
+        return Solution(root, self._derivatives(isotherm, slope, temperature, root.density))
+
+    def _derivatives(
+        self, isotherm: Isotherm[Real], slope: Isotherm[Real], temperature: Real, density: Real
+    ) -> PressureDerivatives[Real]:
+        delta = density / self.reducing_density
+        first, second, _ = isotherm.euler(delta)
+        rt = self.gas_constant * temperature
+        return PressureDerivatives(
+            density * rt * (1.0 + first),
+            rt * (1.0 + first + second),
+            density * self.gas_constant * (1.0 + first - slope.first_of_slope(delta)),
+        )
 
     def _density_block(self, temperature: Array, pressure: Array, branch: Branch) -> Root[Array]:
         rho_r = self.reducing_density
@@ -74,16 +99,8 @@ class HelmholtzFluid(Fluid):
 
     def pressure(self, temperature: Real, density: Real) -> PressureDerivatives[Real]:
         """Return pressure and its derivatives; see ``Fluid.pressure``."""
-        tau = self.reducing_temperature / temperature
-        delta = density / self.reducing_density
-        first, second, _ = self._energy.isotherm(tau).euler(delta)
-        first_tau = self._energy.first_tau(tau, delta)
-        rt = self.gas_constant * temperature
-        return PressureDerivatives(
-            density * rt * (1.0 + first),
-            rt * (1.0 + first + second),
-            density * self.gas_constant * (1.0 + first - first_tau),
-        )
+        isotherm, slope = self._energy.with_slopes(self.reducing_temperature / temperature)
+        return self._derivatives(isotherm, slope, temperature, density)
 
     def stiffness(self, temperature: Real, density: Real) -> PressureDerivatives[Real]:
         """Return pressure and its density derivative only; the temperature derivative is given as 0."""
