@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from gasapi.engine.elementary import Array
 from gasapi.engine.phase.region import Region
-from gasapi.engine.protocol import Branch, Status
+from gasapi.engine.protocol import Branch, PressureDerivatives, Status
 from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, Reason
 
@@ -49,12 +49,13 @@ _REASON_OF_STATUS_ARRAY: Final = np.array([_REASON_OF_STATUS[i] for i in range(4
 
 
 class Point(NamedTuple):
-    """One state: density in mol/m3 (0 where bad), reasons, region, and the model's relative uncertainty (k = 2) or None."""
+    """One state: density in mol/m3 (0 where bad), reasons, region, the model's relative uncertainty (k = 2), and derivatives."""
 
     density: float
     flags: int
     region: int
     uncertainty: float | None
+    derivatives: PressureDerivatives[float] | None = None
 
 
 class Block(NamedTuple):
@@ -93,7 +94,8 @@ def evaluate_float(model: PreparedModel, temperature: float, pressure: float, ma
             return Point(0.0, flags | _OUTSIDE_LIMITS, region, None)
     elif region == _UNKNOWN_REGION:
         flags |= _PHASE_UNKNOWN
-    root = model.fluid.density(temperature, pressure, Branch.LIQUID if region == _LIQUID_REGION else Branch.GAS)
+    branch = Branch.LIQUID if region == _LIQUID_REGION else Branch.GAS
+    root, derivatives = model.fluid.solve(temperature, pressure, branch)
     if root.status != 0:
         return Point(0.0, flags | _REASON_OF_STATUS[int(root.status)], region, None)
     density = root.density
@@ -105,7 +107,7 @@ def evaluate_float(model: PreparedModel, temperature: float, pressure: float, ma
     uncertainty = model.uncertainty.at(temperature, pressure, density)
     if model.generalised and not uncertainty <= GOOD_UNCERTAINTY:
         flags |= _UNCERTAINTY_LARGE
-    return Point(density, flags, region, uncertainty)
+    return Point(density, flags, region, uncertainty, derivatives)
 
 
 def evaluate_block(model: PreparedModel, temperature: Array, pressure: Array, margin: float) -> Block:

@@ -66,8 +66,9 @@ def solve_state(context: Context, question: StateQuestion) -> StateAnswer:
     density = z = volume = slope_p = slope_t = expanded = None
     uncertainty = point.uncertainty
     if not bad:
+        assert point.derivatives is not None
         molar = point.density
-        p_rho, p_t = model.fluid.pressure(temperature, molar)[1:]
+        _, p_rho, p_t = point.derivatives
         density = molar * molar_mass
         volume = 1.0 / molar
         z = pressure / (molar * model.fluid.gas_constant * temperature)
