@@ -5,7 +5,7 @@ Built once and never changed, so that it can be shared between threads without a
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Container, Iterable
 from typing import TYPE_CHECKING
 
 from gasapi.errors import UnknownGas
@@ -134,12 +134,13 @@ class Catalogue:
         """Return whether a pure gas is a component of GERG-2008."""
         return gas_id in self._gerg
 
-    def cautions(self, components: Iterable[tuple[str, float]]) -> tuple[str, ...]:
+    def cautions(self, components: Iterable[tuple[str, float]], brought_along: Container[str] = ()) -> tuple[str, ...]:
         """Return the cautions of a composition in plain sentences; see ``hazards``. The general caution is not among them.
 
         :param components: (id, mole fraction) pairs, substances that the question brought along included
+        :param brought_along: the ids of these substances
         """
-        return self._cautions.of(components)
+        return self._cautions.of(components, brought_along)
 
     def hazard_tags(self, gas: Gas) -> tuple[str, ...]:
         """Return the hazard tags of a gas, for a blend those of its components, in alphabetical order."""

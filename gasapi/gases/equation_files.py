@@ -62,6 +62,10 @@ def load_reference(id: str) -> ReferenceEquation:
     """
     if id not in reference_ids():
         raise UnknownGas(id)
+    return _read_reference(id)
+
+
+def _read_reference(id: str) -> ReferenceEquation:
     table = open_data(f"reference/{id}.json")
     if table.text("id") != id:
         raise table.fault("id", f"is {table.text('id')!r}, must be {id!r} as the name of the file says")
@@ -107,6 +111,10 @@ def load_gerg() -> GergData:
 
     :raises DataError: the file does not hold what it must, among it every pair of components exactly once
     """
+    return _read_gerg()
+
+
+def _read_gerg() -> GergData:
     table = open_data("gerg_2008.json")
     for word in ("title", "read_from"):
         table.text(word)

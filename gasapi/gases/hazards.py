@@ -20,7 +20,7 @@ The 23.5 %, 19.5 %, 2 % and 0.1 % are common practice, no source.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Container, Iterable, Sequence
 from functools import lru_cache
 from typing import NamedTuple
 
@@ -48,6 +48,7 @@ _MILD_OXIDISERS = ("oxygen", "nitrous-oxide")
 _ABOVE_TRACE = 1
 _ABOVE_LIMIT = 2
 _ABOVE_HALF = 4
+_BROUGHT_ALONG = 8
 
 _CANCER = (("1", "Causes cancer"), ("2A", "Probably causes cancer"), ("2B", "Possibly causes cancer"))
 
@@ -84,10 +85,12 @@ class Cautions:
         self._write: Callable[[tuple[tuple[str, int], ...], _Verdict], tuple[str, ...]]
         self._write = lru_cache(maxsize=4096)(self._sentences)
 
-    def of(self, components: Iterable[tuple[str, float]]) -> tuple[str, ...]:
+    def of(self, components: Iterable[tuple[str, float]], brought_along: Container[str] = ()) -> tuple[str, ...]:
         """Return the cautions of a composition in plain sentences, ``GENERAL_CAUTION`` not among them.
 
         :param components: (id of a pure gas or of a substance of the question, mole fraction) pairs; they sum to 1
+        :param brought_along: ids that mean substances of the question, even where a gas of the catalogue has the same id:
+            somebody's own "oxygen" is not to be taken for a gas to breathe
         """
         fuel = oxidiser = oxygen = 0.0
         counted = []
@@ -95,14 +98,15 @@ class Cautions:
             if not fraction > 0.0:
                 continue
             bits = (_ABOVE_TRACE if fraction >= _TRACE else 0) | (_ABOVE_HALF if fraction >= _HALF else 0)
-            profile = self._profiles.get(id)
-            if profile is not None:
+            if id in brought_along:
+                bits |= _BROUGHT_ALONG
+            elif (profile := self._profiles.get(id)) is not None:
                 fuel += fraction * profile.fuel
                 oxidiser += fraction * profile.oxidiser
                 if fraction >= profile.limit:
                     bits |= _ABOVE_LIMIT
-            if id == "oxygen":
-                oxygen += fraction
+                if id == "oxygen":
+                    oxygen += fraction
             counted.append((id, bits))
         verdict = _Verdict(
             flammable=fuel >= _FUEL_SHARE,
@@ -121,8 +125,11 @@ class Cautions:
                 found.update(profile.hazard.tags)
         return tuple(sorted(found))
 
+    def _profile_of(self, id: str, bits: int) -> _Profile:
+        return _unknown(id) if bits & _BROUGHT_ALONG else self._profiles.get(id) or _unknown(id)
+
     def _sentences(self, counted: tuple[tuple[str, int], ...], verdict: _Verdict) -> tuple[str, ...]:
-        present = [(self._profiles.get(id) or _unknown(id), bits) for id, bits in counted]
+        present = [(self._profile_of(id, bits), bits) for id, bits in counted]
         sentences: list[str] = []
 
         toxic = [profile for profile, _ in present if "toxic" in profile.hazard.tags]

@@ -24,6 +24,10 @@ def load_interaction() -> Mapping[tuple[str, str], CubicPair]:
 
     :raises DataError: the file does not hold what it must
     """
+    return _read_interaction()
+
+
+def _read_interaction() -> Mapping[tuple[str, str], CubicPair]:
     table = open_data("interaction.json")
     table.text("title")
     table.text("read_from")

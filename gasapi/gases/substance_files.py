@@ -54,6 +54,10 @@ def load_substances() -> tuple[Gas, ...]:
 
     :raises DataError: the file does not hold what it must
     """
+    return _read_substances()
+
+
+def _read_substances() -> tuple[Gas, ...]:
     table = open_data("substances.json")
     for word in ("title", "read_from", "units_note", "hazard_note"):
         table.text(word)
@@ -72,6 +76,10 @@ def load_blends() -> tuple[Gas, ...]:
 
     :raises DataError: the file does not hold what it must, among it fractions that sum to 1
     """
+    return _read_blends()
+
+
+def _read_blends() -> tuple[Gas, ...]:
     pure = {gas.id: gas for gas in load_substances()}
     table = open_data("blends.json")
     table.text("title")
