@@ -26,14 +26,20 @@ class SettingsError(GasapiError):
 
 @dataclass(frozen=True)
 class Settings:
-    """What can be set. Each field but the first two names its variable: ``json_limit`` is ``GASAPI_JSON_LIMIT``.
+    """What can be set; ``json_limit`` is read from ``GASAPI_JSON_LIMIT``, and so on.
 
-    ``token_file`` holds the bearer tokens, one a line; without it no token is asked for. ``site_file`` is the TOML file of
-    the site's own gases and ambient pressure. ``json_limit`` and ``csv_limit`` are the largest bodies in bytes,
-    ``memo_entries`` and ``memo_bytes`` bound the memo of answers of each worker (0 turns it off). ``metrics_folder``
-    is where workers share their counters, as the Prometheus client asks for it (``PROMETHEUS_MULTIPROC_DIR``).
+    ``host``, ``port`` (also ``PORT``) and ``workers`` are where and how ``gasapi serve`` runs unless its options say
+    otherwise, ``open_access`` (``GASAPI_OPEN=1``) lets it answer other machines without tokens. ``token_file`` holds the
+    bearer tokens, one a line; without it no token is asked for. ``site_file`` is the TOML file of the site's own gases and
+    ambient pressure. ``json_limit`` and ``csv_limit`` are the largest bodies in bytes, ``memo_entries`` and ``memo_bytes``
+    bound the memo of answers of each worker (0 turns it off). ``metrics_folder`` is where workers share their counters,
+    as the Prometheus client asks for it (``PROMETHEUS_MULTIPROC_DIR``).
     """
 
+    host: str = "127.0.0.1"
+    port: int = 8080
+    workers: int = 0
+    open_access: bool = False
     token_file: Path | None = None
     site_file: Path | None = None
     metrics_folder: Path | None = None
@@ -50,6 +56,10 @@ class Settings:
         """
         env = os.environ if environment is None else environment
         return cls(
+            host=env.get("GASAPI_HOST") or cls.host,
+            port=_count(env, "GASAPI_PORT", _count(env, "PORT", cls.port)),
+            workers=_count(env, "GASAPI_WORKERS", cls.workers),
+            open_access=_flag(env, "GASAPI_OPEN"),
             token_file=_file(env, "GASAPI_TOKEN_FILE"),
             site_file=_file(env, "GASAPI_SITE_FILE"),
             metrics_folder=Path(env["PROMETHEUS_MULTIPROC_DIR"]) if env.get("PROMETHEUS_MULTIPROC_DIR") else None,
@@ -68,6 +78,13 @@ def _file(env: Mapping[str, str], name: str) -> Path | None:
     if not path.is_file():
         raise SettingsError(name, value, "there is no such file")
     return path
+
+
+def _flag(env: Mapping[str, str], name: str) -> bool:
+    value = env.get(name) or "0"
+    if value not in ("0", "1"):
+        raise SettingsError(name, value[:80], "give 1 or 0")
+    return value == "1"
 
 
 def _count(env: Mapping[str, str], name: str, default: int) -> int:

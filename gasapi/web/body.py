@@ -26,17 +26,35 @@ def read_body(environ: Environ, limit: int) -> bytes:
     """Return the body of a request.
 
     :param limit: bytes that it may have
-    :raises Problem: 400 where the body ends before its announced length; 413 where it is longer than the limit
+    :raises Problem: 400 where the body breaks off or its chunks are broken; 408 where it does not come; 413 where it is longer
+        than the limit
     """
-    stream = environ["wsgi.input"]
     length = announced_length(environ)
-    if length is not None:
-        if length > limit:
-            raise _too_large(limit)
-        body: bytes = stream.read(length) if length else b""
-        if len(body) < length:
-            raise Problem(400, f"the body ends after {len(body)} of the {length} bytes that were announced")
-        return body
+    try:
+        return (
+            _read_announced(environ["wsgi.input"], length, limit)
+            if length is not None
+            else _read_chunks(environ["wsgi.input"], limit)
+        )
+    except Problem:
+        raise
+    except TimeoutError:
+        raise Problem(408, "the body did not arrive in time; send it again") from None
+    except Exception:
+        # each server has exceptions of its own for broken chunks and connections; none is the service's fault
+        raise Problem(400, "the body cannot be read: its chunks are broken, or the connection ended") from None
+
+
+def _read_announced(stream: Any, length: int, limit: int) -> bytes:
+    if length > limit:
+        raise _too_large(limit)
+    body: bytes = stream.read(length) if length else b""
+    if len(body) < length:
+        raise Problem(400, f"the body ends after {len(body)} of the {length} bytes that were announced")
+    return body
+
+
+def _read_chunks(stream: Any, limit: int) -> bytes:
     pieces, held = [], 0
     while piece := stream.read(min(_PIECE, limit + 1 - held)):
         held += len(piece)

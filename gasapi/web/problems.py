@@ -53,6 +53,7 @@ KINDS: Mapping[int, Kind] = {
     404: Kind("NotFound", "Nothing is found here"),
     405: Kind("MethodNotAllowed", "The method is not allowed here"),
     406: Kind("NotAcceptable", "No acceptable form of the answer"),
+    408: Kind("RequestTimeout", "The request took too long to arrive"),
     413: Kind("ContentTooLarge", "The body is too large"),
     415: Kind("UnsupportedMediaType", "The body has the wrong media type"),
     422: Kind("UnprocessableContent", "The question does not make sense"),

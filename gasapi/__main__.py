@@ -1,0 +1,7 @@
+"""``python -m gasapi``."""
+
+import sys
+
+from gasapi.cli import main
+
+sys.exit(main())

@@ -1,0 +1,161 @@
+"""``gasapi serve``: run the service under gunicorn, on loopback unless told otherwise."""
+
+from __future__ import annotations
+
+import argparse
+import ipaddress
+import os
+import shutil
+import sys
+import tempfile
+from pathlib import Path
+from typing import Any
+
+from gasapi.errors import GasapiError
+from gasapi.settings import Settings
+
+__all__ = ["add_parser", "is_loopback"]
+
+_MOST_WORKERS = 8
+_CONNECTIONS = 2000  # of each worker
+_KEEP_ALIVE = 65  # s; longer than the 60 s for which proxies commonly keep connections to what is behind them
+_GRACE = 30  # s that requests have to finish when the service is stopped
+_SILENCE = 120  # s after which a worker that does not answer is replaced
+_REQUEST_LINE = 8190  # bytes, the most that gunicorn takes; a mixture in a query is long
+_MEMORY_FOLDER = Path("/dev/shm")
+
+# numbers are computed in one thread for each request; threads of the linear algebra library would only cost
+_ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
+
+
+def add_parser(commands: Any) -> None:
+    """Add the subcommand."""
+    parser: argparse.ArgumentParser = commands.add_parser(
+        "serve",
+        help="run the service",
+        description="Run the service. On any address but loopback it asks for tokens (GASAPI_TOKEN_FILE), or for --open.",
+    )
+    parser.add_argument("--host", help="address to listen on (GASAPI_HOST; default 127.0.0.1)")
+    parser.add_argument("--port", type=int, help="port to listen on (GASAPI_PORT or PORT; default 8080)")
+    parser.add_argument(
+        "--workers", type=int, help=f"processes (GASAPI_WORKERS; default one for each core, at most {_MOST_WORKERS})"
+    )
+    parser.add_argument(
+        "--connections", type=int, default=_CONNECTIONS, help=f"open connections of each worker (default {_CONNECTIONS})"
+    )
+    parser.add_argument(
+        "--keep-alive",
+        type=int,
+        default=_KEEP_ALIVE,
+        help=f"seconds for which an idle connection is kept (default {_KEEP_ALIVE})",
+    )
+    parser.add_argument("--open", action="store_true", help="answer other machines without tokens (GASAPI_OPEN=1)")
+    parser.add_argument("--access-log", action="store_true", help="write a line for each request to standard output")
+    parser.add_argument("--certificate", type=Path, help="TLS certificate, a file in PEM form; needs --key")
+    parser.add_argument("--key", type=Path, help="private key of the certificate")
+    parser.set_defaults(run=_run)
+
+
+def is_loopback(host: str) -> bool:
+    """Return whether an address can be reached from this machine alone; of names only ``localhost`` counts."""
+    try:
+        return ipaddress.ip_address(host).is_loopback
+    except ValueError:
+        return host == "localhost"
+
+
+def _run(options: argparse.Namespace) -> int:
+    for name in _ONE_THREAD:
+        os.environ.setdefault(name, "1")
+    try:
+        settings = Settings.from_environment()
+        _check_access(options.host or settings.host, options.open or settings.open_access, settings)
+        _check_data(settings)
+    except GasapiError as error:
+        print(f"gasapi serve: {error}", file=sys.stderr)
+        return 2
+    folder = None
+    if settings.metrics_folder is None:
+        folder = Path(tempfile.mkdtemp(prefix="gasapi-metrics-"))
+        os.environ["PROMETHEUS_MULTIPROC_DIR"] = str(folder)
+    _serve(_gunicorn_settings(options, settings), folder)
+    return 0
+
+
+class _Refused(GasapiError):
+    """The service may not start like this."""
+
+
+def _check_access(host: str, open_access: bool, settings: Settings) -> None:
+    if settings.token_file is not None:
+        from gasapi.web.tokens import TokenList
+
+        TokenList.from_file(settings.token_file)
+    elif not open_access and not is_loopback(host):
+        raise _Refused(
+            f"{host} can be reached from other machines: name a file of tokens in GASAPI_TOKEN_FILE (gasapi token makes one), "
+            "or say --open to answer everyone"
+        )
+
+
+def _check_data(settings: Settings) -> None:
+    """Read the site file now, so that a fault in it is told before any worker starts."""
+    if settings.site_file is not None:
+        from gasapi.gases.catalogue import Catalogue
+        from gasapi.gases.site import load_site
+
+        load_site(settings.site_file, Catalogue.load())
+
+
+def _cores() -> int:
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+def _gunicorn_settings(options: argparse.Namespace, settings: Settings) -> dict[str, Any]:
+    host = options.host or settings.host
+    port = settings.port if options.port is None else options.port
+    return {
+        "bind": f"[{host}]:{port}" if ":" in host else f"{host}:{port}",
+        "workers": options.workers or settings.workers or min(_cores(), _MOST_WORKERS),
+        "worker_class": "gasapi.cli.worker.CooperativeWorker",
+        "worker_connections": options.connections,
+        "worker_tmp_dir": str(_MEMORY_FOLDER) if os.access(_MEMORY_FOLDER, os.W_OK) else None,
+        "keepalive": options.keep_alive,
+        "timeout": _SILENCE,
+        "graceful_timeout": _GRACE,
+        "limit_request_line": _REQUEST_LINE,
+        "control_socket_disable": True,
+        "proc_name": "gasapi",
+        "accesslog": "-" if options.access_log else None,
+        "certfile": str(options.certificate) if options.certificate else None,
+        "keyfile": str(options.key) if options.key else None,
+    }
+
+
+def _serve(server_settings: dict[str, Any], metrics_folder: Path | None) -> None:
+    """Run gunicorn in this process until it is told to stop."""
+    from gunicorn.app.base import BaseApplication
+    from prometheus_client.multiprocess import mark_process_dead
+
+    def child_exit(server: Any, worker: Any) -> None:
+        mark_process_dead(worker.pid)
+
+    def on_exit(server: Any) -> None:
+        if metrics_folder is not None:
+            shutil.rmtree(metrics_folder, ignore_errors=True)
+
+    class Server(BaseApplication):
+        """gunicorn with settings in place of a command line."""
+
+        def load_config(self) -> None:
+            """Take the settings."""
+            for name, value in {**server_settings, "child_exit": child_exit, "on_exit": on_exit}.items():
+                self.cfg.set(name, value)
+
+        def load(self) -> Any:
+            """Build the application, in the worker."""
+            from gasapi.app import create_app
+
+            return create_app()
+
+    Server().run()
