@@ -24,7 +24,16 @@ from gasapi.engine.elementary import Array, Real, exp, log
 from gasapi.engine.estimate import DensityEstimate
 from gasapi.engine.protocol import Branch, Status
 
-__all__ = ["REDUCED_TEMPERATURE_MIN", "BwrConstants", "Isotherm", "ReducedFluid", "ReducedRoot", "ReducedRoots", "select_rows"]
+__all__ = [
+    "REDUCED_TEMPERATURE_MIN",
+    "BwrConstants",
+    "Isotherm",
+    "ReducedFluid",
+    "ReducedRoot",
+    "ReducedRoots",
+    "select_rows",
+    "terms",
+]
 
 REDUCED_TEMPERATURE_MIN: Final = 0.2
 """T_r below which no density is given; the authors stop at 0.3."""
@@ -83,24 +92,25 @@ class Isotherm(NamedTuple, Generic[Real]):
     beta: float
     gamma: float
 
-    def terms(self, density: Real) -> tuple[Real, Real, Real, Real]:
-        """Return F, F', F''/2 and the sum of the absolute terms of F, [-]."""
-        b, c, d, e, beta, gamma = self
-        x = density
-        x2 = x * x
-        g = gamma * x2
-        x5 = d * (x2 * x2 * x)
-        decay = e * x2 * exp(-g)
-        bx = b * x
-        cx2 = c * x2
-        q = 3.0 * beta + g * (5.0 - 2.0 * beta - 2.0 * g)
-        tail = decay * (beta + g)
-        f = x * (1.0 + bx + cx2 + x5 + tail)
-        f1 = 1.0 + 2.0 * bx + 3.0 * cx2 + 6.0 * x5 + decay * q
-        # 1/x times this is F''/2
-        f2 = bx + 3.0 * cx2 + 15.0 * x5 + decay * (q * (1.0 - g) + g * (5.0 - 2.0 * beta - 4.0 * g))
-        size = x * (1.0 + abs(bx) + abs(cx2) + x5 + tail)
-        return f, f1, f2 / x, size
+
+def terms(isotherm: Isotherm[Real], density: Real) -> tuple[Real, Real, Real, Real]:
+    """Return F, F', F''/2 and the sum of the absolute terms of F, [-]."""
+    b, c, d, e, beta, gamma = isotherm
+    x = density
+    x2 = x * x
+    g = gamma * x2
+    x5 = d * (x2 * x2 * x)
+    decay = e * x2 * exp(-g)
+    bx = b * x
+    cx2 = c * x2
+    q = 3.0 * beta + g * (5.0 - 2.0 * beta - 2.0 * g)
+    tail = decay * (beta + g)
+    f = x * (1.0 + bx + cx2 + x5 + tail)
+    f1 = 1.0 + 2.0 * bx + 3.0 * cx2 + 6.0 * x5 + decay * q
+    # 1/x times this is F''/2
+    f2 = bx + 3.0 * cx2 + 15.0 * x5 + decay * (q * (1.0 - g) + g * (5.0 - 2.0 * beta - 4.0 * g))
+    size = x * (1.0 + abs(bx) + abs(cx2) + x5 + tail)
+    return f, f1, f2 / x, size
 
 
 def select_rows(isotherm: Isotherm[Array], mask: NDArray[np.bool_]) -> Isotherm[Array]:
@@ -217,11 +227,11 @@ class ReducedFluid:
         """Return T_r and d at which F' = F'' = 0, by Newton's method with differences in T_r."""
         temperature, density = 1.0, 3.7
         for _ in range(60):
-            _, f1, f2, _ = self.isotherm(temperature).terms(density)
+            _, f1, f2, _ = terms(self.isotherm(temperature), density)
             up, down = self.isotherm(temperature + 1e-5), self.isotherm(temperature - 1e-5)
-            f1_t = (up.terms(density)[1] - down.terms(density)[1]) / 2e-5
-            f2_t = (up.terms(density)[2] - down.terms(density)[2]) / 2e-5
-            f2_d = (up.terms(density + 1e-4)[2] - up.terms(density - 1e-4)[2]) / 2e-4
+            f1_t = (terms(up, density)[1] - terms(down, density)[1]) / 2e-5
+            f2_t = (terms(up, density)[2] - terms(down, density)[2]) / 2e-5
+            f2_d = (terms(up, density + 1e-4)[2] - terms(up, density - 1e-4)[2]) / 2e-4
             determinant = f1_t * f2_d - 2.0 * f2 * f2_t
             temperature -= (f1 * f2_d - 2.0 * f2 * f2) / determinant
             density -= (f1_t * f2 - f2_t * f1) / determinant
@@ -245,7 +255,7 @@ class ReducedFluid:
                 isotherm = self.isotherm(self._critical_temperature * (1.0 - s * s))
                 x = previous[1] + slope * (s - previous[0])
                 for _ in range(40):
-                    _, f1, f2, _ = isotherm.terms(x)
+                    _, f1, f2, _ = terms(isotherm, x)
                     step = f1 / (2.0 * f2)
                     x -= step
                     if abs(step) <= 1e-14 * x:
@@ -308,7 +318,7 @@ def _solve(isotherm: Isotherm[float], target: float, x: float, low: float, high:
     tried = False
     slope = 1.0
     for _ in range(_MAX_STEPS):
-        value, slope, half, size = isotherm.terms(x)
+        value, slope, half, size = terms(isotherm, x)
         f = value - target
         if abs(f) <= _RESIDUAL * (size + target):
             return ReducedRoot(x, slope, Status.CONVERGED)
@@ -347,7 +357,7 @@ def _solve_block(isotherm: Isotherm[Array], target: Array, x: Array, low: Array,
     status = np.full(x.shape, Status.NOT_CONVERGED, dtype=np.int8)
     rows = np.arange(x.size)
     for _ in range(_MAX_STEPS):
-        value, slope, half, size = isotherm.terms(x)
+        value, slope, half, size = terms(isotherm, x)
         f = value - target
         small = np.abs(f) <= _RESIDUAL * (size + target)
         negative = f < 0.0

@@ -33,10 +33,11 @@ from numpy.typing import NDArray
 from gasapi.engine.elementary import Array, Real, exp, log
 from gasapi.engine.models.cubic import GAS_CONSTANT, refusal
 from gasapi.engine.protocol import Branch, CriticalPoint, Fluid, PressureDerivatives, Root, Status
-from gasapi.engine.reduced_bwr import REDUCED_TEMPERATURE_MIN, BwrConstants, ReducedFluid, select_rows
+from gasapi.engine.reduced_bwr import REDUCED_TEMPERATURE_MIN, BwrConstants, ReducedFluid, select_rows, terms
 from gasapi.gases.records import CubicPair, Limits, Substance
 
 __all__ = [
+    "ACENTRIC_FACTOR_MAX",
     "ID",
     "NAME",
     "REFERENCE",
@@ -85,6 +86,9 @@ REFERENCE = BwrConstants(
     acentric_factor=0.3978,
 )
 """Table 1 of the paper."""
+
+ACENTRIC_FACTOR_MAX: Final = 1.0
+"""Our choice: beyond it the extrapolated blend of the liquid is no stable state at most pressures."""
 
 _BLOCK_ROWS: Final = 4096
 _TINY: Final = 1e-300
@@ -258,8 +262,8 @@ class LeeKesler(Fluid):
         t = temperature / self._tc
         x0, xr, p = self._match(t, density / self._unit)
         h = self._h
-        _, slope0, _, _ = self._simple.isotherm(t).terms(x0)
-        _, sloper, _, _ = self._reference.isotherm(t).terms(xr)
+        _, slope0, _, _ = terms(self._simple.isotherm(t), x0)
+        _, sloper, _, _ = terms(self._reference.isotherm(t), xr)
         k0 = (1.0 - h) / (x0 * x0 * slope0)
         kr = h / (xr * xr * sloper)
         # for each fluid F' dx = dp_r/T_r - (p_r/T_r + T_r x dZ/dT_r) dT_r/T_r, and dV = -((1 - h) dx0/x0^2 + h dxr/xr^2)
@@ -279,10 +283,18 @@ class LeeKesler(Fluid):
         """Return ln(phi), [-], blended at equal T_r and p_r, NaN off the branches; see ``Fluid.residual_gibbs``."""
         t = temperature / self._tc
         x0, xr, _ = self._match(t, density / self._unit)
-        if type(x0) is float and x0 != x0:
-            return x0
-        simple = self._simple.log_fugacity_coefficient(t, x0)
-        return simple + self._h * (self._reference.log_fugacity_coefficient(t, xr) - simple)
+        if type(x0) is float:
+            return self._blend(t, x0, xr) if x0 == x0 else x0
+        # the logarithm takes no NaN
+        found = x0 == x0
+        x0, xr = np.where(found, x0, 1.0), np.where(found, xr, 1.0)
+        return cast(Real, np.where(found, self._blend(t, x0, xr), _NAN))
+
+    def _blend(self, temperature: Real, simple_density: Real, reference_density: Real) -> Real:
+        """Return ln(phi) of the blend from the two fluids' densities, all reduced, [-]."""
+        simple = self._simple.log_fugacity_coefficient(temperature, simple_density)
+        reference = self._reference.log_fugacity_coefficient(temperature, reference_density)
+        return simple + self._h * (reference - simple)
 
     def saturation_pressure(self, temperature: Real) -> Real:
         """Return the vapour pressure by the paper's correlation, Pa; NaN outside 0.3 Tc to Tc.
@@ -351,8 +363,8 @@ class LeeKesler(Fluid):
         xr = xr if xr < highr else highr
         xr = xr if xr > lowr else lowr
         for _ in range(_MAX_STEPS):
-            f0, slope0, _, _ = first.terms(x0)
-            fr, sloper, _, _ = second.terms(xr)
+            f0, slope0, _, _ = terms(first, x0)
+            fr, sloper, _, _ = terms(second, xr)
             slope0 = slope0 if slope0 > 1e-12 else 1e-12
             sloper = sloper if sloper > 1e-12 else 1e-12
             k0 = (1.0 - h) / (x0 * x0 * slope0)
@@ -380,7 +392,7 @@ class LeeKesler(Fluid):
         for fluid in (self._simple, self._reference):
             end = fluid.branch_end(temperature, branch)
             if end is not None:
-                ends.append(temperature * fluid.isotherm(temperature).terms(end)[0])
+                ends.append(temperature * terms(fluid.isotherm(temperature), end)[0])
         if branch == Branch.GAS:
             # no gas here has Z below 0.01
             low, high = 0.01 * temperature / volume, min([_PRESSURE_MAX * temperature, *ends])
@@ -428,8 +440,8 @@ class LeeKesler(Fluid):
         for _ in range(_MAX_STEPS):
             if not rows.size:
                 break
-            f0, slope0, _, _ = first.terms(x0)
-            fr, sloper, _, _ = second.terms(xr)
+            f0, slope0, _, _ = terms(first, x0)
+            fr, sloper, _, _ = terms(second, xr)
             slope0, sloper = np.maximum(slope0, 1e-12), np.maximum(sloper, 1e-12)
             k0 = (1.0 - h) / (x0 * x0 * slope0)
             kr = h / (xr * xr * sloper)
@@ -473,6 +485,12 @@ def _brackets(fluid: ReducedFluid, temperature: Array, gas: NDArray[np.bool_]) -
 
 def serves(substances: Sequence[Substance]) -> str | None:
     """Return why these substances cannot be served, or None."""
+    for substance in substances:
+        if substance.acentric_factor > ACENTRIC_FACTOR_MAX:
+            return (
+                f"{NAME} blends two fluids of acentric factor 0 and 0.3978 and is not carried to "
+                f"{substance.acentric_factor:g} ({substance.id}); it takes up to {ACENTRIC_FACTOR_MAX:g}"
+            )
     return refusal(substances, NAME)
 
 
