@@ -11,8 +11,9 @@ Two kinds of search:
 vapour, above the saturated liquid, or anywhere at a supercritical temperature).
 
 *guarded*: nothing is known. Newton's steps start below the gas root (above the liquid root), where the isotherm bends such
-that they cannot pass it; a slope that is not positive means that the branch ends before this pressure: there is no root.
-Multiparameter equations have further roots with a positive slope between the branches, which this search never meets.
+that they cannot pass it, and are too short to leap over the region between the branches; a slope that is not positive means
+that the branch ends before this pressure: there is no root. Multiparameter equations have further roots with a positive
+slope between the branches, which this search never meets.
 """
 
 from __future__ import annotations
@@ -26,12 +27,14 @@ from numpy.typing import NDArray
 from gasapi.engine.elementary import Array
 from gasapi.engine.protocol import Root, Status
 
-__all__ = ["ReducedIsotherm", "solve_block", "solve_float"]
+__all__ = ["GUARDED_STEP", "ReducedIsotherm", "solve_block", "solve_float"]
 
 _MOST_STEPS: Final = 120
 # error left after a step of relative size e, with bend k = delta F''/(2 F'): k^2 e^3 (Halley), k e^2 (Newton)
 _HALLEY_STEP: Final = 1e-6
 _NEWTON_STEP: Final = 1e-8
+# longest step of a guarded search, in reduced density: a fifth of the least width between the branches at T_r/T = 1.05
+GUARDED_STEP: Final = 0.15
 # relative width at which a bracket cannot shrink any further
 _CLOSED: Final = 4.5e-16
 # above this fraction of rows at work a block is not worth compressing
@@ -86,8 +89,13 @@ def solve_float(isotherm, target: float, start: float, low: float, high: float, 
                 new = 2.0 * x
             if enclosed and not low < new < high:
                 new = 0.5 * (low + high) if high < math.inf else 2.0 * x
-            elif new <= 0.0:
-                new = 0.5 * x
+            elif not enclosed:
+                if new > x + GUARDED_STEP:
+                    new = x + GUARDED_STEP
+                elif new < x - GUARDED_STEP:
+                    new = x - GUARDED_STEP
+                if new <= 0.0:
+                    new = 0.5 * x
         else:
             if not enclosed:
                 return Root(x, Status.NO_ROOT)
@@ -145,7 +153,10 @@ def solve_block(  # type: ignore[no-untyped-def]
             double = 2.0 * x
             new = np.where(new > double, double, new)
             outside = enclosed & ~((low < new) & (new < high)) | ~rising
-            new = np.where(outside, np.where(bounded, 0.5 * (low + high), double), np.where(new <= 0.0, 0.5 * x, new))
+            if not enclosed.all():
+                short = np.fmin(np.fmax(new, x - GUARDED_STEP), x + GUARDED_STEP)
+                new = np.where(enclosed, new, np.where(short <= 0.0, 0.5 * x, short))
+            new = np.where(outside, np.where(bounded, 0.5 * (low + high), double), new)
             closed = at_work & (high < math.inf) & (high - low <= _CLOSED * high)
             result[rows[closed]] = x[closed]
             status[rows[closed]] = Status.CONVERGED

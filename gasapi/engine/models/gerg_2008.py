@@ -158,8 +158,8 @@ class GergFluid(HelmholtzFluid):
         if self.reducing_temperature < _GUARDED_ABOVE * temperature:
             return self._estimate.gas(temperature, pressure), 0.0, math.inf, False
         if branch == Branch.GAS:
-            return pressure / (self.gas_constant * temperature), 0.0, math.inf, True
-        return 1.3 * self._estimate.liquid(temperature, pressure), 0.0, math.inf, True
+            return self._gas_start_float(temperature, pressure), 0.0, math.inf, True
+        return self._liquid_start_float(temperature, pressure), 0.0, math.inf, True
 
     def _search_block(
         self, temperature: Array, pressure: Array, branch: Branch
@@ -171,7 +171,7 @@ class GergFluid(HelmholtzFluid):
         if rows.size:
             t, p = temperature.take(rows), pressure.take(rows)
             if branch == Branch.GAS:
-                start[rows] = p / (self.gas_constant * t)
+                start[rows] = self._gas_start_block(t, p)
             else:
-                start[rows] = 1.3 * self._estimate.liquid(t, p)
+                start[rows] = self._liquid_start_block(t, p)
         return start, low, high, cast("NDArray[np.bool_]", guarded)

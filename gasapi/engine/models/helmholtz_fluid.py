@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import math
 from abc import abstractmethod
-from typing import cast
+from typing import Final, cast
 
 import numpy as np
 from numpy.typing import NDArray
 
-from gasapi.engine.density import solve_block, solve_float
+from gasapi.engine.density import GUARDED_STEP, solve_block, solve_float
 from gasapi.engine.elementary import Array, Real, log
+from gasapi.engine.estimate import DensityEstimate
 from gasapi.engine.helmholtz import Isotherm, TermSum
 from gasapi.engine.protocol import Branch, Fluid, PressureDerivatives, Root, Solution
 
@@ -18,6 +19,10 @@ __all__ = ["BLOCK_ROWS", "HelmholtzFluid"]
 
 # rows that are solved together: their coefficients and temporaries stay in the processor's second-level cache
 BLOCK_ROWS = 2048
+# a guarded search for a liquid starts this much above an estimate, and at this reduced density at least: where the estimate has
+# no liquid root it is a gas's
+LIQUID_EXCESS: Final = 1.3
+LEAST_LIQUID: Final = 2.2
 
 
 class HelmholtzFluid(Fluid):
@@ -27,6 +32,8 @@ class HelmholtzFluid(Fluid):
     :param reducing_temperature: K
     :param reducing_density: mol/m3
     """
+
+    _estimate: DensityEstimate
 
     def __init__(self, energy: TermSum, reducing_temperature: float, reducing_density: float) -> None:
         self._energy = energy
@@ -42,6 +49,28 @@ class HelmholtzFluid(Fluid):
         self, temperature: Array, pressure: Array, branch: Branch
     ) -> tuple[Array, Array, Array, NDArray[np.bool_]]:
         """Return the same for a block, each of shape (n,)."""
+
+    def _gas_start_float(self, temperature: float, pressure: float) -> float:
+        """Return where a guarded search for a gas root begins: at the ideal gas's density, but at one step at most."""
+        ideal = pressure / (self.gas_constant * temperature)
+        most = GUARDED_STEP * self.reducing_density
+        return ideal if ideal < most else most
+
+    def _gas_start_block(self, temperature: Array, pressure: Array) -> Array:
+        ideal = pressure / (self.gas_constant * temperature)
+        most = GUARDED_STEP * self.reducing_density
+        return np.where(ideal < most, ideal, most)
+
+    def _liquid_start_float(self, temperature: float, pressure: float) -> float:
+        """Return where a guarded search for a liquid root begins: well inside the liquid."""
+        guess = LIQUID_EXCESS * self._estimate.liquid(temperature, pressure)
+        least = LEAST_LIQUID * self.reducing_density
+        return guess if guess > least else least
+
+    def _liquid_start_block(self, temperature: Array, pressure: Array) -> Array:
+        guess = LIQUID_EXCESS * self._estimate.liquid(temperature, pressure)
+        least = LEAST_LIQUID * self.reducing_density
+        return np.where(guess > least, guess, least)
 
     def density(self, temperature: Real, pressure: Real, branch: Branch) -> Root[Real]:
         """Return the density root of a branch; see ``Fluid.density``."""

@@ -78,7 +78,7 @@ class ReferenceFluid(HelmholtzFluid):
         if branch == Branch.GAS:
             edge = self.saturation.vapour_density(temperature) * (1.0 + _CURVE_SLACK)
             if not stable_gas:
-                return pressure / (self.gas_constant * temperature), 0.0, math.inf, True
+                return self._gas_start_float(temperature, pressure), 0.0, math.inf, True
             start = self._estimate.gas(temperature, pressure)
             return (start if start < edge else edge), 0.0, edge, False
         edge = self.saturation.liquid_density(temperature) * (1.0 - _CURVE_SLACK)
@@ -89,8 +89,8 @@ class ReferenceFluid(HelmholtzFluid):
 
     def _guarded_start(self, temperature: float, pressure: float, branch: Branch) -> tuple[float, float, float, bool]:
         if branch == Branch.GAS:
-            return pressure / (self.gas_constant * temperature), 0.0, math.inf, True
-        return 1.3 * self._estimate.liquid(temperature, pressure), 0.0, math.inf, True
+            return self._gas_start_float(temperature, pressure), 0.0, math.inf, True
+        return self._liquid_start_float(temperature, pressure), 0.0, math.inf, True
 
     def _search_block(
         self, temperature: Array, pressure: Array, branch: Branch
@@ -111,7 +111,7 @@ class ReferenceFluid(HelmholtzFluid):
             if branch == Branch.GAS:
                 edge = self.saturation.vapour_density(t) * (1.0 + _CURVE_SLACK)
                 guess = start.take(rows)
-                start[rows] = np.where(stable_gas, np.where(guess < edge, guess, edge), p / (self.gas_constant * t))
+                start[rows] = np.where(stable_gas, np.where(guess < edge, guess, edge), self._gas_start_block(t, p))
                 high[rows] = np.where(stable_gas, edge, math.inf)
                 guarded[rows] = ~stable_gas
             else:
@@ -129,7 +129,7 @@ class ReferenceFluid(HelmholtzFluid):
         if rows.size:
             t, p = temperature.take(rows), pressure.take(rows)
             if branch == Branch.GAS:
-                start[rows] = p / (self.gas_constant * t)
+                start[rows] = self._gas_start_block(t, p)
             else:
-                start[rows] = 1.3 * self._estimate.liquid(t, p)
+                start[rows] = self._liquid_start_block(t, p)
         return start
