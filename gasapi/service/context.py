@@ -74,7 +74,7 @@ class GasModels:
     def cautions(self) -> tuple[str, ...]:
         """What a person must know of this gas, and the general caution."""
         components = zip(self.gas.components, self.mole_fractions, strict=True)
-        return (*self._context.catalogue.cautions(components), GENERAL_CAUTION)
+        return (*self._context.catalogue.cautions(components, self.gas.own), GENERAL_CAUTION)
 
     @cached_property
     def reference_equation(self) -> ReferenceEquation | None:
@@ -163,7 +163,7 @@ class GasModels:
             validity=data.validity,
             extended=data.extended,
             uncertainty=PublishedUncertainty(data.uncertainties, data.validity, fluid.reducing_density, least),
-            phase=self._context.phases.of_gerg(fluid),
+            phase=self._context.phases.of_gerg(fluid, self.gas, self.reference_equation),
             flags=int(Reason.FRACTIONS_SCALED) if self.gas.scaled else 0,
             generalised=False,
             gas_only=False,
@@ -175,7 +175,7 @@ class GasModels:
         flags = int(Reason.FRACTIONS_SCALED) if self.gas.scaled else 0
         if any("associating" in s.flags for s in self.gas.substances):
             flags |= int(Reason.ASSOCIATING)
-        if line.uses_interaction and getattr(fluid, "missing_pairs", ()):
+        if line.uses_interaction and getattr(fluid, "missing_pairs", None):
             flags |= int(Reason.INTERACTION_MISSING)
         validity, extended = self.limits(model)
         return PreparedModel(
@@ -196,7 +196,7 @@ class GasModels:
     def _phase_of_generalised(self, model: str, fluid: Fluid) -> PhaseJudge:
         """Return the verdict of the model itself where it has one, else of the best equation that has."""
         if GENERALISED[model].has_saturation:
-            return self._context.phases.of_generalised(fluid, self.gas, self.mole_fractions)
+            return self._context.phases.of_generalised(fluid, self.gas, self.reference_equation, self.mole_fractions)
         if self.gas.reference_id is not None:
             return self.prepared(reference.ID).phase
         if self.gas.gerg:

@@ -79,7 +79,9 @@ def evaluate_float(model: PreparedModel, temperature: float, pressure: float, ma
     flags = model.flags
     inside, extended = model.validity, model.extended
     if not (extended.temperature_min <= temperature <= extended.temperature_max and pressure <= extended.pressure_max):
-        region = model.phase.region_float(temperature, pressure) if model.phase.covers(temperature, pressure) else _UNKNOWN_REGION
+        region = (
+            model.phase.region_float(temperature, pressure) if model.phase.covers(temperature, pressure) else _UNKNOWN_REGION
+        )
         return Point(0.0, flags | _OUTSIDE_LIMITS, region, None)
     if not (inside.temperature_min <= temperature <= inside.temperature_max and pressure <= inside.pressure_max):
         flags |= _OUTSIDE_VALIDITY

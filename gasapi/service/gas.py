@@ -24,7 +24,8 @@ class ResolvedGas:
     """A gas as the models see it. Hashable; equal gases have equal compositions.
 
     ``components`` are catalogue ids (or ids of the question's own substances) in catalogue order, ``shares`` their fractions in
-    ``basis``, all above 0 and summing to 1. ``reference_id`` names a reference equation that covers the gas as a whole.
+    ``basis``, all above 0 and summing to 1. ``reference_id`` names a reference equation that covers the gas as a whole; ``own``
+    are the components that the question brought along.
     """
 
     id: str | None
@@ -36,6 +37,7 @@ class ResolvedGas:
     gerg: bool
     scaled: bool
     site: bool = False
+    own: tuple[str, ...] = ()
 
     def __hash__(self) -> int:
         # the long substance records follow from the components, or are compared when two gases meet in one slot
@@ -70,11 +72,14 @@ def resolve_gas(spec: GasSpec, catalogue: Catalogue) -> ResolvedGas:
     if spec.name is not None:
         substance = own.get(spec.name.strip().casefold())
         if substance is not None:
-            return _pure(substance.id, substance, None, False)
+            return _pure(substance.id, substance, None, False, own=(substance.id,))
         gas = catalogue.find(spec.name)
         if gas.substance is not None:
             return _pure(gas.id, gas.substance, catalogue.reference_id(gas.id), catalogue.gerg_component(gas.id))
-        return _mixture(gas.id, _spread(gas, 1.0, catalogue), "mole", False, catalogue, own, gas.kind == "site")
+        site = gas.kind == "site"
+        if gas.mass_fractions is not None:
+            return _mixture(gas.id, dict(gas.mass_fractions), "mass", False, catalogue, own, site)
+        return _mixture(gas.id, _spread(gas, 1.0), "mole", False, catalogue, own, site)
     return _from_fractions(spec, catalogue, own)
 
 
@@ -92,7 +97,7 @@ def _from_fractions(spec: GasSpec, catalogue: Catalogue, own: dict[str, Substanc
         if gas.substance is not None:
             _add(shares, gas.id, value)
         elif spec.basis == "mole":
-            for component, part in _spread(gas, value, catalogue).items():
+            for component, part in _spread(gas, value).items():
                 _add(shares, component, part)
         else:
             for component, part in _mass_spread(gas, value, catalogue).items():
@@ -107,7 +112,7 @@ def _from_fractions(spec: GasSpec, catalogue: Catalogue, own: dict[str, Substanc
         (only,) = parts
         substance = own.get(only.casefold())
         if substance is not None:
-            return _pure(only, substance, None, False, scaled)
+            return _pure(only, substance, None, False, scaled, (only,))
         gas = catalogue.find(only)
         assert gas.substance is not None
         return _pure(only, gas.substance, catalogue.reference_id(only), catalogue.gerg_component(only), scaled)
@@ -118,7 +123,7 @@ def _add(shares: dict[str, float], component: str, value: float) -> None:
     shares[component] = shares.get(component, 0.0) + value
 
 
-def _spread(gas: Gas, share: float, catalogue: Catalogue) -> dict[str, float]:
+def _spread(gas: Gas, share: float) -> dict[str, float]:
     """Return the mole fractions of a blend's components, times its share."""
     assert gas.blend is not None
     return {component: share * fraction for component, fraction in gas.blend}
@@ -132,8 +137,15 @@ def _mass_spread(gas: Gas, share: float, catalogue: Catalogue) -> dict[str, floa
     return {c: share * m / total for c, m in masses.items()}
 
 
-def _pure(id: str, substance: Substance, reference_id: str | None, gerg: bool, scaled: bool = False) -> ResolvedGas:
-    return ResolvedGas(id, (id,), (1.0,), "mole", (substance,), reference_id, gerg, scaled)
+def _pure(
+    id: str,
+    substance: Substance,
+    reference_id: str | None,
+    gerg: bool,
+    scaled: bool = False,
+    own: tuple[str, ...] = (),
+) -> ResolvedGas:
+    return ResolvedGas(id, (id,), (1.0,), "mole", (substance,), reference_id, gerg, scaled, own=own)
 
 
 def _mixture(
@@ -158,4 +170,5 @@ def _mixture(
         all(c.casefold() not in own and catalogue.gerg_component(c) for c in components),
         scaled,
         site,
+        tuple(c for c in components if c.casefold() in own),
     )

@@ -172,28 +172,42 @@ class PhaseLibrary:
         assert equation.bubble_dew is not None
         return PureJudge(PseudoPureVerdict(fluid, BubbleDewLines(equation.bubble_dew)))
 
-    def of_gerg(self, fluid: GergFluid) -> PhaseJudge:
-        """Return the judge of a composition by GERG-2008."""
+    def of_gerg(self, fluid: GergFluid, gas: ResolvedGas, equation: ReferenceEquation | None) -> PhaseJudge:
+        """Return the judge of a composition by GERG-2008; a pure gas freezes as its reference equation says."""
         if fluid.critical is not None:
-            return self._pure(fluid, fluid.system.components[0], None)
+            return self._pure(fluid, gas, equation)
         return NoVerdict()
 
-    def of_generalised(self, fluid: Fluid, gas: ResolvedGas, fractions: tuple[float, ...]) -> PhaseJudge:
+    def of_generalised(
+        self, fluid: Fluid, gas: ResolvedGas, equation: ReferenceEquation | None, fractions: tuple[float, ...]
+    ) -> PhaseJudge:
         """Return the judge of a gas by a generalised equation that has a saturation line of its own."""
         if gas.is_pure:
-            substance = gas.substances[0]
-            triple = substance.triple_temperature
-            return self._pure(fluid, substance, triple if triple is not None else substance.melting_temperature)
+            return self._pure(fluid, gas, equation)
         return NoVerdict()
 
-    def _pure(self, fluid: Fluid, key: object, triple: float | None) -> PhaseJudge:
-        curve = self._curves.get_or_make((fluid.model, key), lambda: SaturationCurve(fit_saturation(fluid)))
-        return PureJudge(PureVerdict(fluid, curve, triple))
+    def _pure(self, fluid: Fluid, gas: ResolvedGas, equation: ReferenceEquation | None) -> PhaseJudge:
+        substance = gas.substances[0]
+        curve = self._curves.get_or_make((fluid.model, substance), lambda: SaturationCurve(fit_saturation(fluid)))
+        triple = substance.triple_temperature
+        if triple is None:
+            triple = substance.melting_temperature
+        line = None
+        if equation is not None:
+            triple = equation.triple.temperature if equation.triple is not None else None
+            line = self._line(equation)
+        return PureJudge(PureVerdict(fluid, curve, triple, line))
+
+    def _line(self, equation: ReferenceEquation) -> SublimationLine | None:
+        curve = equation.sublimation
+        if curve is None:
+            return None
+        return self._sublimation.get_or_make(equation.id, lambda: SublimationLine(curve))
 
     def vapour_below_triple(self, equation: ReferenceEquation, temperature: float, pressure: float) -> bool:
         """Return whether a state is known to be vapour below the triple point, by the published sublimation line."""
         curve = equation.sublimation
         if curve is None or not curve.temperature_min <= temperature < curve.triple.temperature:
             return False
-        line = self._sublimation.get_or_make(equation.id, lambda: SublimationLine(curve))
-        return pressure < line.pressure(temperature)
+        line = self._line(equation)
+        return line is not None and pressure < line.pressure(temperature)

@@ -74,9 +74,7 @@ class PhaseJudge(Protocol):
         """Return the final region of one state."""
         ...
 
-    def refine_block(
-        self, temperature: Array, pressure: Array, density: Array, region: NDArray[np.int8]
-    ) -> NDArray[np.int8]:
+    def refine_block(self, temperature: Array, pressure: Array, density: Array, region: NDArray[np.int8]) -> NDArray[np.int8]:
         """Return the final regions of rows."""
         ...
 

@@ -106,7 +106,9 @@ def choose(candidates: Candidates, requested: str, temperature: float, pressure:
     if published:
         if generalised and candidates.vapour_below_triple(temperature, pressure):
             best = _least_uncertain(candidates, generalised, temperature, pressure)
-            return Choice(best, "the published equation ends at the triple point; for vapour below it the least uncertain general one")
+            return Choice(
+                best, "the published equation ends at the triple point; for vapour below it the least uncertain general one"
+            )
         return Choice(published[0], f"{_WORDS[published[0]]}; the state lies outside its extended limits")
     if not generalised:
         return Choice(None, "no equation can serve this gas")

@@ -19,6 +19,8 @@ __all__ = ["AMBIENT_SHARE", "Answered", "answer_state", "solve_state"]
 AMBIENT_SHARE: Final = 0.1
 """The part of the absolute pressure above which an assumed ambient lowers the level."""
 
+_NEAR_CRITICAL: Final = int(Reason.NEAR_CRITICAL)
+_INPUT_BAD: Final = int(Reason.INPUT_BAD)
 _CRITICAL_AMPLIFICATION_MOST: Final = 1e3
 
 
@@ -74,7 +76,7 @@ def solve_state(context: Context, question: StateQuestion) -> StateAnswer:
         z = pressure / (molar * model.fluid.gas_constant * temperature)
         slope_p = molar_mass / p_rho
         slope_t = -molar_mass * p_t / p_rho
-        if uncertainty is not None and flags & Reason.NEAR_CRITICAL:
+        if uncertainty is not None and flags & _NEAR_CRITICAL:
             uncertainty = _amplified(uncertainty, molar * p_rho / pressure)
         if question.input_uncertainty is not None:
             expanded = expanded_density_uncertainty(
@@ -139,7 +141,7 @@ def phase_answer(
 ) -> PhaseAnswer:
     """Return what an answer says of the phase at one state."""
     judge = model.phase
-    if point.flags & Reason.INPUT_BAD or not judge.covers(temperature, pressure):
+    if point.flags & _INPUT_BAD or not judge.covers(temperature, pressure):
         return PhaseAnswer(REGION_NAMES[point.region], None, None, None, judge.model, ())
     m = judge.margins(temperature, pressure, None if bad else point.density, point.region, margin)
     return PhaseAnswer(
