@@ -95,7 +95,7 @@ class PhaseVerdict(ABC):
         self.model: str | None = model
         self.critical = critical
         self.triple_temperature = triple
-        self._fluid = fluid
+        self.fluid = fluid
         self._accepted = accepted
         self._hottest = hottest
         self._coldest = coldest
@@ -239,7 +239,7 @@ class PhaseVerdict(ABC):
             and _NEAR_DENSITY[0] < reduced < _NEAR_DENSITY[1]
         ):
             return False
-        p, slope, _ = self._fluid.pressure(temperature, density)
+        p, slope, _ = self.fluid.pressure(temperature, density)
         return density * slope < _SOFT * p
 
     def near_critical_block(self, temperature: Array, density: Array) -> NDArray[np.bool_]:
@@ -250,7 +250,7 @@ class PhaseVerdict(ABC):
         rows = np.flatnonzero(near)
         if rows.size:
             rho = density.take(rows)
-            p, slope, _ = self._fluid.pressure(temperature.take(rows), rho)
+            p, slope, _ = self.fluid.pressure(temperature.take(rows), rho)
             near[rows] = rho * slope < _SOFT * p
         return near
 
@@ -290,7 +290,7 @@ class PhaseVerdict(ABC):
         if region == _LIQUID and dew is not None and dew - temperature < margin:
             found.append(Sign("near_saturation", _numbers(margin=margin, dew_point_temperature=dew)))
         if density is not None and self.near_critical_float(temperature, density):
-            p, slope, _ = self._fluid.pressure(temperature, density)
+            p, slope, _ = self.fluid.pressure(temperature, density)
             found.append(
                 Sign(
                     "near_critical",
