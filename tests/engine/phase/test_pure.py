@@ -252,10 +252,27 @@ def test_signs_at_known_states(
     assert expected == _codes(verdict(id), temperature, pressure)
 
 
-_MELTING = (
-    "argon carbon-dioxide carbon-monoxide cyclohexane deuterium ethane ethanol ethylene isopentane krypton methane methanol "
-    "n-butane n-pentane neon nitrogen parahydrogen propane propylene"
-).split()
+_MELTING = [
+    "argon",
+    "carbon-dioxide",
+    "carbon-monoxide",
+    "cyclohexane",
+    "deuterium",
+    "ethane",
+    "ethanol",
+    "ethylene",
+    "isopentane",
+    "krypton",
+    "methane",
+    "methanol",
+    "n-butane",
+    "n-pentane",
+    "neon",
+    "nitrogen",
+    "parahydrogen",
+    "propane",
+    "propylene",
+]
 
 
 @pytest.mark.parametrize("id", _MELTING)
