@@ -7,7 +7,7 @@ operations, in a written order, and the functions of this module, which are them
 The exponential splits x = (256 k + j) ln2 / 256 + r and takes 2^(j/256) from a table and exp(r) from a polynomial; the
 logarithm splits off the exponent and the nearest multiple of 1/128 and takes the rest from the series of the inverse
 hyperbolic tangent (both after Tang, ACM Trans. Math. Softw. 15 (1989) 144 and 16 (1990) 378, with tables of our own).
-Largest error seen against 40-digit arithmetic: below 1 unit in the last place for either.
+Largest error seen against 40-digit arithmetic, in units in the last place: 1.1 for the exponential, 2 for the logarithm.
 """
 
 from __future__ import annotations
@@ -19,7 +19,7 @@ from typing import TypeVar, cast
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["Array", "Real", "exp", "log", "maximum", "minimum", "power", "sqrt"]
+__all__ = ["Array", "Real", "exp", "exp_block", "log", "log_block", "maximum", "minimum", "power", "sqrt"]
 
 Array = NDArray[np.float64]
 """A one-dimensional block of numbers."""
@@ -40,7 +40,6 @@ _C3, _C4 = EXP_COEFFICIENTS
 EXP_LOWEST = -708.0
 EXP_HIGHEST = 709.0
 POWERS_OF_TWO = [math.ldexp(1.0, k) for k in range(-1022, 1024)]
-_POWERS_ARRAY = np.array(POWERS_OF_TWO)
 ROOTS_OF_TWO = [2.0 ** (j / _STEPS) for j in range(_STEPS)]
 _ROOTS_ARRAY = np.array(ROOTS_OF_TWO)
 
@@ -65,30 +64,41 @@ def exp(x: Real) -> Real:
         rest = r + r * r * (0.5 + r * (_C3 + r * _C4))
         scale: float = POWERS_OF_TWO[(index >> 8) + 1022]
         return (root + root * rest) * scale
-    return cast(Real, _exp_block(cast(Array, x)))
+    return cast(Real, exp_block(cast(Array, x)))
 
 
-def _exp_block(x: Array) -> Array:
+def exp_block(x: Array, out: Array | None = None) -> Array:
+    """Return e to the power of every element; see ``exp``.
+
+    :param x: exponents, an array of any shape, [-]
+    :param out: where the result goes, which may be ``x`` itself; a new array by default
+    """
     # fmax and fmin, since they turn NaN into a bound as the comparisons on floats do
-    x = np.fmin(np.fmax(x, EXP_LOWEST), EXP_HIGHEST)
+    x = np.fmax(x, EXP_LOWEST)
+    np.fmin(x, EXP_HIGHEST, out=x)
     k = x * SCALE
     k += ROUND
     k -= ROUND
-    r = x - k * STEP_HIGH
-    r -= k * STEP_LOW
     index = k.astype(np.int64)
-    root = _ROOTS_ARRAY.take(index & 255)
-    rest = r * _C4
+    rest = k * STEP_HIGH
+    x -= rest
+    k *= STEP_LOW
+    x -= k
+    rest = np.multiply(x, _C4, out=out)
     rest += _C3
-    rest *= r
+    rest *= x
     rest += 0.5
-    rest *= r * r
-    rest += r
-    rest *= root
-    rest += root
+    np.multiply(x, x, out=k)
+    rest *= k
+    rest += x
+    _ROOTS_ARRAY.take(index & 255, out=k, mode="clip")
+    rest *= k
+    rest += k
+    # 2 to the power of a whole number, by its bits: exponents stay within those of normal numbers
     index >>= 8
-    index += 1022
-    rest *= _POWERS_ARRAY.take(index)
+    index += 1023
+    index <<= 52
+    rest *= index.view(np.float64)
     return rest
 
 
@@ -108,10 +118,15 @@ def log(x: Real) -> Real:
         s2 = s * s
         series = 2.0 * s + s * s2 * (0.6666666666666666 + s2 * (0.4 + s2 * 0.2857142857142857))
         return (exponent * _LN2_HIGH + _LOG_TABLE[int(nearest)]) + (series + exponent * _LN2_LOW)
-    return cast(Real, _log_block(cast(Array, x)))
+    return cast(Real, log_block(cast(Array, x)))
 
 
-def _log_block(x: Array) -> Array:
+def log_block(x: Array, out: Array | None = None) -> Array:
+    """Return the natural logarithm of every element; see ``log``.
+
+    :param x: positive, normal numbers, an array of any shape, [-]
+    :param out: where the result goes, which may be ``x`` itself; a new array by default
+    """
     mantissa, exponent = np.frexp(x)
     small = mantissa < 0.7071067811865476
     mantissa = np.where(small, mantissa * 2.0, mantissa)
@@ -121,7 +136,10 @@ def _log_block(x: Array) -> Array:
     s = (mantissa - c) / (mantissa + c)
     s2 = s * s
     series = 2.0 * s + s * s2 * (0.6666666666666666 + s2 * (0.4 + s2 * 0.2857142857142857))
-    return (power_of_two * _LN2_HIGH + _LOG_TABLE_ARRAY.take(nearest.astype(np.int64))) + (series + power_of_two * _LN2_LOW)
+    series += power_of_two * _LN2_LOW
+    whole = power_of_two * _LN2_HIGH
+    whole += _LOG_TABLE_ARRAY.take(nearest.astype(np.int64), mode="clip")
+    return np.add(whole, series, out=out)
 
 
 def power(x: Real, exponent: float) -> Real:

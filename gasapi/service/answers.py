@@ -86,8 +86,8 @@ class TwoPhaseAnswer(NamedTuple):
 class StateAnswer(NamedTuple):
     """One state, in SI: density kg/m3, molar volume m3/mol, derivatives kg/m3/Pa and kg/m3/K; None where nothing can be said.
 
-    ``density_expanded_uncertainty`` (kg/m3, k = 2) is given only where the question states input uncertainties (and is then a member
-    of ``result``, null in a bad answer).
+    ``density_expanded_uncertainty`` (kg/m3, k = 2) is given only where the question states input uncertainties (and is then
+    a member of ``result``, null in a bad answer).
     """
 
     gas: GasAnswer

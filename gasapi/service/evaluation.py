@@ -49,7 +49,7 @@ _REASON_OF_STATUS_ARRAY: Final = np.array([_REASON_OF_STATUS[i] for i in range(4
 
 
 class Point(NamedTuple):
-    """One state: density in mol/m3 (0 where bad), reasons, region, the model's relative uncertainty (k = 2), and derivatives."""
+    """One state: density in mol/m3 (0 where bad), reasons, region, the model's relative uncertainty (k = 2), derivatives."""
 
     density: float
     flags: int
@@ -59,7 +59,7 @@ class Point(NamedTuple):
 
 
 class Block(NamedTuple):
-    """Rows of states, each member of shape (n,): density in mol/m3 (NaN where bad), reasons, regions, relative uncertainty (NaN)."""
+    """Rows of states, each of shape (n,): density in mol/m3 and relative uncertainty (NaN where bad), reasons, regions."""
 
     density: Array
     flags: NDArray[np.int64]

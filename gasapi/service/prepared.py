@@ -48,8 +48,8 @@ class UncertaintyRule(Protocol):
 class PhaseJudge(Protocol):
     """The phase of one gas by one equation. Regions are codes of ``gasapi.engine.phase.region.Region``.
 
-    ``survey`` gives the region as far as temperature and pressure tell it, and whether the dew point is nearer than a margin (K);
-    ``refine`` completes it with the density that was found.
+    ``survey`` gives the region as far as temperature and pressure tell it, and whether the dew point is nearer than a
+    margin (K); ``refine`` completes it with the density that was found.
     """
 
     model: str | None

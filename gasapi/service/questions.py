@@ -12,8 +12,8 @@ __all__ = ["GasSpec", "InputUncertainty", "StateQuestion"]
 class GasSpec(NamedTuple):
     """The gas as it was named: a name, or fractions of named gases.
 
-    Exactly one of ``name`` and ``fractions`` is given. ``fractions`` are (name, fraction) pairs in the order of the request, already
-    divided by their fraction unit; they need not sum to 1 exactly. ``substances`` are those of the question itself, by id.
+    Exactly one of ``name`` and ``fractions`` is given. ``fractions`` are (name, fraction) pairs in the order of the request,
+    already divided by their fraction unit; they need not sum to 1 exactly. ``substances`` are those of the question itself.
     """
 
     name: str | None = None
@@ -33,7 +33,8 @@ class StateQuestion(NamedTuple):
     """One state. ``pressure`` Pa absolute, ``temperature`` K.
 
     ``ambient_pressure`` is the ambient, in Pa, that was added to a gauge reading without having been given, and None otherwise.
-    ``dew_point_margin`` is in K, None for the default of the site. ``accuracy`` is a relative error that a certified table may have.
+    ``dew_point_margin`` is in K, None for the default of the site. ``accuracy`` is a relative error that a certified table
+    may have.
     """
 
     gas: GasSpec

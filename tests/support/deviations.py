@@ -155,9 +155,7 @@ def gerg_deviation(ids: tuple[str, ...], fractions: np.ndarray, n: int, seed: in
     names = [_GERG_NAMES.get(i, i.replace("-", "")) for i in ids]
     model = teqp.make_model({"kind": "GERG2008resid", "model": {"names": names}})
     r = model.get_R(fractions)
-    theirs = np.array(
-        [b * r * a * (1.0 + model.get_Ar01(float(a), float(b), fractions)) for a, b in zip(t, rho, strict=True)]
-    )
+    theirs = np.array([b * r * a * (1.0 + model.get_Ar01(float(a), float(b), fractions)) for a, b in zip(t, rho, strict=True)])
     ours = fluid.pressure(t, rho)
     return _worst(np.abs(ours.pressure - theirs) / (rho * ours.density_derivative), t, rho)
 

@@ -54,9 +54,10 @@ def test_water_has_the_pressures_of_iapws_r6_95(temperature, density, pressure):
     """Table 7 of the release, to its nine digits."""
     water = reference_fluid("water")
     found = water.pressure(temperature, density / water.molar_mass).pressure
-    assert found == pytest.approx(pressure * 1e6, rel=2e-9 if density > 1.0 else 1e-9, abs=0.0) or abs(
-        found - pressure * 1e6
-    ) < 60.0
+    assert (
+        found == pytest.approx(pressure * 1e6, rel=2e-9 if density > 1.0 else 1e-9, abs=0.0)
+        or abs(found - pressure * 1e6) < 60.0
+    )
 
 
 @pytest.mark.parametrize(("temperature", "density", "energy", "first", "second", "mixed"), IAPWS_ENERGIES)
@@ -95,7 +96,9 @@ def test_states_in_thirty_digit_arithmetic(point):
     assert abs(found.pressure - point["pressure_Pa"]) < 2e-11 * rho * max(found.density_derivative, fluid.gas_constant * t)
 
 
-@pytest.mark.parametrize("gas", ["nitrogen", "carbon-dioxide", "water", "methane", "ammonia", "methanol", "air", "helium", "r12"])
+@pytest.mark.parametrize(
+    "gas", ["nitrogen", "carbon-dioxide", "water", "methane", "ammonia", "methanol", "air", "helium", "r12"]
+)
 def test_alone_and_in_a_block_give_the_same_bits(gas):
     """Density, pressure and its derivatives of a row do not depend on how it is asked for."""
     fluid = reference_fluid(gas)
