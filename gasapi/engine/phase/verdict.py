@@ -268,7 +268,13 @@ class PhaseVerdict(ABC):
         return Margins(dew, None if dew is None else temperature - dew, None if limit is None else limit - pressure)
 
     def signs(
-        self, temperature: float, pressure: float, density: float | None, region: int, margin: float = 5.0
+        self,
+        temperature: float,
+        pressure: float,
+        density: float | None,
+        region: int,
+        margin: float = 5.0,
+        margins: Margins | None = None,
     ) -> tuple[Sign, ...]:
         """Return what there is to warn of at one state.
 
@@ -282,9 +288,10 @@ class PhaseVerdict(ABC):
         :param density: mol/m3, or None where there is none
         :param region: the final region
         :param margin: K
+        :param margins: the margins of this state, where they are known already
         """
         found = []
-        dew = self.dew_temperature(pressure)
+        dew = self.dew_temperature(pressure) if margins is None else margins.dew_point_temperature
         if region == _GAS and self.survey_float(temperature, pressure, margin)[1]:
             found.append(Sign("near_dew_point", _numbers(margin=margin, dew_point_temperature=dew)))
         if region == _LIQUID and dew is not None and dew - temperature < margin:

@@ -224,7 +224,9 @@ def _codes(judge: PureVerdict, temperature: float, pressure: float) -> set[str]:
     if region in (GAS, LIQUID):
         density = judge.fluid.density(temperature, pressure, Branch.LIQUID if region == LIQUID else Branch.GAS).density
         region = judge.refine_float(temperature, pressure, density, region)
-    return {sign.code for sign in judge.signs(temperature, pressure, density, region)}
+    signs = judge.signs(temperature, pressure, density, region)
+    assert signs == judge.signs(temperature, pressure, density, region, margins=judge.margins(temperature, pressure))
+    return {sign.code for sign in signs}
 
 
 @pytest.mark.parametrize(
