@@ -276,7 +276,8 @@ def fit_saturation(fluid: Fluid, temperature_min: float | None = None) -> Satura
     """Return the saturation curve of a pure fluid by its own equation, from the critical point down.
 
     The curve ends at ``temperature_min`` or, before it, with the piece in which the saturation pressure falls below 1e-6 Pa
-    or before which the equation loses one of its branches; the table says where. Deterministic: the same fluid gives the same numbers.
+    or before which the equation loses one of its branches; the table says where. Deterministic: the same fluid gives the
+    same numbers.
 
     :param fluid: a pure gas with a critical point, whose ``density`` tells the branches apart
     :param temperature_min: where to end, K; 0.3 of the critical temperature where left out
