@@ -110,9 +110,9 @@ class PureJudge:
 
     def margins(self, temperature: float, pressure: float, density: float | None, region: int, margin: float) -> Margins:
         """Return the margins and warnings of one state."""
-        dew, warm, dense = self.verdict.margins(temperature, pressure)
-        signs = self.verdict.signs(temperature, pressure, density, region, margin)
-        return Margins(dew, warm, dense, tuple(words_of(s) for s in signs))
+        margins = self.verdict.margins(temperature, pressure)
+        signs = self.verdict.signs(temperature, pressure, density, region, margin, margins)
+        return Margins(*margins, tuple(words_of(s) for s in signs))
 
 
 class NoVerdict:
@@ -170,12 +170,13 @@ class PhaseLibrary:
         if isinstance(fluid.saturation, SaturationCurve):
             return PureJudge(reference_verdict(equation, fluid, fluid.saturation))
         assert equation.bubble_dew is not None
-        return PureJudge(PseudoPureVerdict(fluid, BubbleDewLines(equation.bubble_dew)))
+        freezing = None if equation.triple is None else equation.triple.temperature
+        return PureJudge(PseudoPureVerdict(fluid, BubbleDewLines(equation.bubble_dew), freezing))
 
     def of_gerg(self, fluid: GergFluid, gas: ResolvedGas, equation: ReferenceEquation | None) -> PhaseJudge:
         """Return the judge of a composition by GERG-2008; a pure gas freezes as its reference equation says."""
         if fluid.critical is not None:
-            return self._pure(fluid, gas, equation)
+            return self._pure(fluid, gas, equation, published=True)
         return NoVerdict()
 
     def of_generalised(
@@ -186,7 +187,9 @@ class PhaseLibrary:
             return self._pure(fluid, gas, equation)
         return NoVerdict()
 
-    def _pure(self, fluid: Fluid, gas: ResolvedGas, equation: ReferenceEquation | None) -> PhaseJudge:
+    def _pure(
+        self, fluid: Fluid, gas: ResolvedGas, equation: ReferenceEquation | None, published: bool = False
+    ) -> PhaseJudge:
         substance = gas.substances[0]
         curve = self._curves.get_or_make((fluid.model, substance), lambda: SaturationCurve(fit_saturation(fluid)))
         triple = substance.triple_temperature
@@ -196,7 +199,11 @@ class PhaseLibrary:
         if equation is not None:
             triple = equation.triple.temperature if equation.triple is not None else None
             line = self._line(equation)
-        return PureJudge(PureVerdict(fluid, curve, triple, line))
+        accepted = None
+        if published:
+            # a generalised equation has the accepted critical point by construction
+            accepted = (substance.critical_temperature, substance.critical_pressure)
+        return PureJudge(PureVerdict(fluid, curve, triple, line, accepted))
 
     def _line(self, equation: ReferenceEquation) -> SublimationLine | None:
         curve = equation.sublimation
