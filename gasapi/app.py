@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import logging
+import sys
 
 from flask import Flask, Response, request
 from werkzeug.exceptions import HTTPException, MethodNotAllowed
@@ -12,15 +13,16 @@ from gasapi.gases.site import load_site
 from gasapi.service.context import Context
 from gasapi.settings import Settings
 from gasapi.web import problems
-from gasapi.web.edge import ROUTE, Edge
+from gasapi.web.edge import FAILURE, ROUTE, Edge
 from gasapi.web.memo import Memo
 from gasapi.web.metrics import Metrics
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Problem
 from gasapi.web.representations import OrjsonProvider
+from gasapi.web.request_log import RequestLog
 from gasapi.web.routes.catalogue import catalogue_routes
 from gasapi.web.routes.operations import operation_routes
-from gasapi.web.routes.state import state_routes
+from gasapi.web.routes.state import PATH, state_answerer, state_routes
 from gasapi.web.tokens import TokenList
 
 __all__ = ["create_app", "create_context"]
@@ -64,14 +66,16 @@ def create_app(settings: Settings | None = None, context: Context | None = None)
     app.json = OrjsonProvider(app)
     # an address with a doubled slash is another address, not a redirection
     app.url_map.merge_slashes = False
-    for routes in (state_routes(parts), catalogue_routes(parts), operation_routes(parts)):
+    answer = state_answerer(parts)
+    for routes in (state_routes(answer), catalogue_routes(parts), operation_routes(parts)):
         app.register_blueprint(routes)
     app.before_request(_note_route)
     app.register_error_handler(Problem, _problem_answer)
     app.register_error_handler(HTTPException, _http_answer)
     app.register_error_handler(Exception, _failure_answer)
+    log = RequestLog(sys.stdout.fileno()) if settings.request_log else None
     memo = Memo(settings.memo_entries, settings.memo_bytes)
-    app.wsgi_app = Edge(app.wsgi_app, tokens, memo, metrics)  # type: ignore[method-assign]
+    app.wsgi_app = Edge(app.wsgi_app, tokens, memo, metrics, log, {PATH: answer})  # type: ignore[method-assign]
     return app
 
 
@@ -102,4 +106,4 @@ def _http_answer(error: HTTPException) -> Response:
 
 def _failure_answer(error: Exception) -> Response:
     _log.error("a request failed", exc_info=error)
-    return _problem_answer(Problem(500, "the service failed to answer this question; its log tells why"))
+    return _problem_answer(Problem(500, FAILURE))

@@ -29,17 +29,18 @@ class Settings:
     """What can be set; ``json_limit`` is read from ``GASAPI_JSON_LIMIT``, and so on.
 
     ``host``, ``port`` (also ``PORT``) and ``workers`` are where and how ``gasapi serve`` runs unless its options say
-    otherwise, ``open_access`` (``GASAPI_OPEN=1``) lets it answer other machines without tokens. ``token_file`` holds the
-    bearer tokens, one a line; without it no token is asked for. ``site_file`` is the TOML file of the site's own gases and
-    ambient pressure. ``json_limit`` and ``csv_limit`` are the largest bodies in bytes, ``memo_entries`` and ``memo_bytes``
-    bound the memo of answers of each worker (0 turns it off). ``metrics_folder`` is where workers share their counters,
-    as the Prometheus client asks for it (``PROMETHEUS_MULTIPROC_DIR``).
+    otherwise, ``open_access`` (``GASAPI_OPEN=1``) lets it answer other machines without tokens, ``request_log`` (``1``)
+    writes a line for each request. ``token_file`` holds the bearer tokens, one a line; without it no token is asked for.
+    ``site_file`` is the TOML file of the site's own gases and ambient pressure. ``json_limit`` and ``csv_limit`` are the
+    largest bodies in bytes, ``memo_entries`` and ``memo_bytes`` bound the memo of answers of each worker (0 turns it off).
+    ``metrics_folder`` is where workers share their counters (``PROMETHEUS_MULTIPROC_DIR``, as the Prometheus client has it).
     """
 
     host: str = "127.0.0.1"
     port: int = 8080
     workers: int = 0
     open_access: bool = False
+    request_log: bool = False
     token_file: Path | None = None
     site_file: Path | None = None
     metrics_folder: Path | None = None
@@ -60,6 +61,7 @@ class Settings:
             port=_count(env, "GASAPI_PORT", _count(env, "PORT", cls.port)),
             workers=_count(env, "GASAPI_WORKERS", cls.workers),
             open_access=_flag(env, "GASAPI_OPEN"),
+            request_log=_flag(env, "GASAPI_REQUEST_LOG"),
             token_file=_file(env, "GASAPI_TOKEN_FILE"),
             site_file=_file(env, "GASAPI_SITE_FILE"),
             metrics_folder=Path(env["PROMETHEUS_MULTIPROC_DIR"]) if env.get("PROMETHEUS_MULTIPROC_DIR") else None,

@@ -50,7 +50,11 @@ def add_parser(commands: Any) -> None:
         help=f"seconds for which an idle connection is kept (default {_KEEP_ALIVE})",
     )
     parser.add_argument("--open", action="store_true", help="answer other machines without tokens (GASAPI_OPEN=1)")
-    parser.add_argument("--access-log", action="store_true", help="write a line for each request to standard output")
+    parser.add_argument(
+        "--request-log",
+        action="store_true",
+        help="write a line of JSON for each request to standard output (GASAPI_REQUEST_LOG=1)",
+    )
     parser.add_argument("--certificate", type=Path, help="TLS certificate, a file in PEM form; needs --key")
     parser.add_argument("--key", type=Path, help="private key of the certificate")
     parser.set_defaults(run=_run)
@@ -74,6 +78,8 @@ def _run(options: argparse.Namespace) -> int:
     except GasapiError as error:
         print(f"gasapi serve: {error}", file=sys.stderr)
         return 2
+    if options.request_log:
+        os.environ["GASAPI_REQUEST_LOG"] = "1"
     folder = None
     if settings.metrics_folder is None:
         folder = Path(tempfile.mkdtemp(prefix="gasapi-metrics-"))
@@ -126,7 +132,6 @@ def _gunicorn_settings(options: argparse.Namespace, settings: Settings) -> dict[
         "limit_request_line": _REQUEST_LINE,
         "control_socket_disable": True,
         "proc_name": "gasapi",
-        "accesslog": "-" if options.access_log else None,
         "certfile": str(options.certificate) if options.certificate else None,
         "keyfile": str(options.key) if options.key else None,
     }
@@ -154,8 +159,14 @@ def _serve(server_settings: dict[str, Any], metrics_folder: Path | None) -> None
 
         def load(self) -> Any:
             """Build the application, in the worker."""
+            import gc
+
             from gasapi.app import create_app
 
-            return create_app()
+            app = create_app()
+            # what was built now stays; the collector need not look through it again and again
+            gc.collect()
+            gc.freeze()
+            return app
 
     Server().run()

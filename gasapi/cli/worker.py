@@ -17,6 +17,7 @@ from gunicorn.workers.ggevent import GeventWorker
 __all__ = ["CooperativeWorker"]
 
 _READ_MARGIN = 5.0  # s that a single read may take beyond the keep-alive time
+_TURN = 0.002  # s after which a connection that never waits lets the others have their turn
 _IDLE_BEFORE_CLOSING = 1.0  # s without a request after which a stopping worker closes a kept connection
 
 
@@ -42,16 +43,22 @@ class _Wait(gevent.Timeout):
 class CooperativeWorker(GeventWorker):
     """Serves each connection in a greenlet.
 
-    Beyond gunicorn's own: every read and write of a socket is bounded in time; a stopping worker does not wait for
-    connections that nobody uses; and a request with a transfer coding that is not known is the client's fault (400).
+    Beyond gunicorn's own: a client that asks without a pause does not keep the others waiting; every read and write of a
+    socket is bounded in time; a stopping worker does not wait for connections that nobody uses; and a request with a
+    transfer coding that is not known is the client's fault (400).
     """
 
     def __init__(self, *args: Any, **kwargs: Any) -> None:
         super().__init__(*args, **kwargs)
         self._waits: set[_Wait] = set()
+        self._turn_ends = 0.0
 
     def timeout_ctx(self) -> _Wait:
-        """Return the bound of the wait for a request head."""
+        """Return the bound of the wait for a request head, after a turn of the others where it is due."""
+        now = monotonic()
+        if now > self._turn_ends:
+            gevent.sleep(0)
+            self._turn_ends = monotonic() + _TURN
         return _Wait(self.cfg.keepalive, self._waits)
 
     def handle(self, listener: Any, client: Any, addr: Any) -> None:

@@ -7,11 +7,12 @@ from typing import Any
 from gasapi.web.negotiation import JSON, content_type
 from gasapi.web.problems import Problem
 
-__all__ = ["announced_length", "read_body", "require_json"]
+__all__ = ["Environ", "announced_length", "read_body", "require_json"]
 
 _PIECE = 256 * 1024
 
 Environ = dict[str, Any]
+"""What WSGI (PEP 3333) tells of a request."""
 
 
 def announced_length(environ: Environ) -> int | None:

@@ -1,22 +1,23 @@
 """The outermost layer: who may ask, what was answered already, and the count of all requests.
 
-It stands before Flask, so that a question that was answered in this worker costs neither routing nor validation.
+It stands before Flask. A question that was answered in this worker costs neither routing nor validation, and a route that
+is asked at scan rate can be answered directly.
 """
 
 from __future__ import annotations
 
 import logging
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Mapping
 from http import HTTPStatus
-from io import BytesIO
 from time import perf_counter
 from typing import Any, NamedTuple
 
 from gasapi.web import problems
-from gasapi.web.body import announced_length, read_body
-from gasapi.web.memo import Memo, Remembered
+from gasapi.web.body import Environ, announced_length, read_body
+from gasapi.web.memo import Memo
 from gasapi.web.metrics import Metrics
 from gasapi.web.problems import Problem
+from gasapi.web.request_log import RequestLog
 from gasapi.web.tokens import TokenList
 
 __all__ = ["BODY", "OPEN_PATHS", "ROUTE", "Edge", "remember", "status_line"]
@@ -32,22 +33,34 @@ OPEN_PATHS = frozenset({"/", "/livez", "/readyz"})
 
 _OPEN_PREFIX = "/assets/"
 _MEMO = "gasapi.memo"
-_MEMO_PATH = "/v1/state"
 _LONGEST_KEY = 8 * 1024
+FAILURE = "the service failed to answer this question; its log tells why"
+"""All that a caller is told of an exception that nobody foresaw."""
+
 _KNOWN_METHODS = frozenset({"GET", "HEAD", "POST", "OPTIONS", "PUT", "PATCH", "DELETE"})
 
-_log = logging.getLogger(__name__)
+_log = logging.getLogger("gasapi")
 
-Environ = dict[str, Any]
 StartResponse = Callable[..., Any]
 Application = Callable[[Environ, StartResponse], Iterable[bytes]]
+
+
+class Reply(NamedTuple):
+    """An answer with status 200: its headers, the length among them, and its body."""
+
+    headers: list[tuple[str, str]]
+    body: bytes
+
+
+Direct = Callable[[Environ], Reply]
+"""What answers a GET or POST from its environ alone; it raises a Problem where there is no answer."""
 
 
 class _Place(NamedTuple):
     """Where the answer to a request is to be remembered."""
 
     memo: Memo
-    key: tuple[str, str, str, str, bytes]
+    key: tuple[str, str, str, str, str, bytes]
 
     @property
     def size(self) -> int:
@@ -58,13 +71,25 @@ class Edge:
     """A WSGI application around another one.
 
     :param tokens: those that are good, None where no token is asked for
+    :param direct: what answers GET and POST by path, memo included, without the application
+    :param log: where a line is written for each request, None where none is wanted
     """
 
-    def __init__(self, application: Application, tokens: TokenList | None, memo: Memo, metrics: Metrics) -> None:
+    def __init__(
+        self,
+        application: Application,
+        tokens: TokenList | None,
+        memo: Memo,
+        metrics: Metrics,
+        log: RequestLog | None = None,
+        direct: Mapping[str, Direct] | None = None,
+    ) -> None:
         self._application = application
         self._tokens = tokens
         self._memo = memo
         self._metrics = metrics
+        self._log = log
+        self._direct = direct or {}
 
     def __call__(self, environ: Environ, start_response: StartResponse) -> Iterable[bytes]:
         """Answer a request."""
@@ -80,30 +105,38 @@ class Edge:
             return self._answer(environ, started)
         except Problem as problem:
             return _refuse(problem, environ, started)
+        except Exception:
+            _log.exception("a request failed")
+            return _refuse(Problem(500, FAILURE), environ, started)
         finally:
+            route = environ.get(ROUTE, "none")
             method = environ["REQUEST_METHOD"]
-            self._metrics.request(
-                environ.get(ROUTE, "none"),
-                method if method in _KNOWN_METHODS else "other",
-                answered,
-                perf_counter() - start,
-            )
+            if method not in _KNOWN_METHODS:
+                method = "other"
+            seconds = perf_counter() - start
+            self._metrics.request(route, method, answered, seconds)
+            if self._log is not None:
+                self._log.write(route, method, answered, seconds)
 
     def _answer(self, environ: Environ, start_response: StartResponse) -> Iterable[bytes]:
         path = environ["PATH_INFO"]
         if self._tokens is not None and path not in OPEN_PATHS and not path.startswith(_OPEN_PREFIX):
             self._admit(environ, self._tokens)
-        if path == _MEMO_PATH:
-            place = self._place(environ)
-            if place is not None:
-                remembered = self._memo.get(place.key)
-                self._metrics.memo(remembered is not None)
-                if remembered is not None:
-                    environ[ROUTE] = _MEMO_PATH
-                    start_response("200 OK", list(remembered.headers))
-                    return (remembered.body,)
-                environ[_MEMO] = place
-        return self._application(environ, start_response)
+        direct = self._direct.get(path)
+        if direct is None or environ["REQUEST_METHOD"] not in ("GET", "POST"):
+            return self._application(environ, start_response)
+        environ[ROUTE] = path
+        place = self._place(path, environ)
+        if place is not None:
+            remembered = self._memo.get(place.key)
+            self._metrics.memo(remembered is not None)
+            if remembered is not None:
+                start_response("200 OK", list(remembered.headers))
+                return (remembered.body,)
+            environ[_MEMO] = place
+        reply = direct(environ)
+        start_response("200 OK", reply.headers)
+        return (reply.body,)
 
     def _admit(self, environ: Environ, tokens: TokenList) -> None:
         authorization = environ.get("HTTP_AUTHORIZATION", "")
@@ -114,8 +147,8 @@ class Edge:
                 challenge, detail = 'Bearer realm="gasapi"', "send a token as Authorization: Bearer <token>"
             raise Problem(401, detail, headers=[("WWW-Authenticate", challenge)])
 
-    def _place(self, environ: Environ) -> _Place | None:
-        """Return where the answer would be remembered; None where the request is too long for that, or asks otherwise."""
+    def _place(self, path: str, environ: Environ) -> _Place | None:
+        """Return where the answer to a GET or POST would be remembered; None where the request is too long for that."""
         method = environ["REQUEST_METHOD"]
         body = b""
         if method == "POST":
@@ -123,23 +156,19 @@ class Edge:
             if length is None or not 0 < length <= _LONGEST_KEY:
                 return None
             body = environ[BODY] = read_body(environ, _LONGEST_KEY)
-            # Flask finds the stream unread, should anything look for it there
-            environ["wsgi.input"] = BytesIO(body)
-        elif method != "GET":
-            return None
         query = environ["QUERY_STRING"]
         if len(query) > _LONGEST_KEY:
             return None
         # the encoding of the content counts as part of its type: either makes another request of the same bytes
         content = environ.get("CONTENT_TYPE", "") + "\n" + environ.get("HTTP_CONTENT_ENCODING", "")
-        return _Place(self._memo, (method, environ.get("HTTP_ACCEPT", ""), content, query, body))
+        return _Place(self._memo, (path, method, environ.get("HTTP_ACCEPT", ""), content, query, body))
 
 
 def remember(environ: Environ, headers: list[tuple[str, str]], body: bytes) -> None:
     """Keep an answer for the next request of the same bytes, where there is a place for it."""
     place: _Place | None = environ.get(_MEMO)
     if place is not None:
-        place.memo.put(place.key, place.size, Remembered(headers, body))
+        place.memo.put(place.key, place.size, Reply(headers, body))
 
 
 def status_line(status: int) -> str:

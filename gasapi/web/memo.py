@@ -9,18 +9,14 @@ from __future__ import annotations
 from collections import OrderedDict
 from collections.abc import Hashable
 from threading import Lock
-from typing import NamedTuple
+from typing import TYPE_CHECKING
 
-__all__ = ["Memo", "Remembered"]
+if TYPE_CHECKING:
+    from gasapi.web.edge import Reply
+
+__all__ = ["Memo"]
 
 _OVERHEAD = 400  # bytes that an entry costs besides its key and its body, roughly
-
-
-class Remembered(NamedTuple):
-    """An answer with status 200: its headers and its body."""
-
-    headers: list[tuple[str, str]]
-    body: bytes
 
 
 class Memo:
@@ -30,10 +26,10 @@ class Memo:
         self._entries = entries
         self._size = size
         self._held = 0
-        self._answers: OrderedDict[Hashable, tuple[Remembered, int]] = OrderedDict()
+        self._answers: OrderedDict[Hashable, tuple[Reply, int]] = OrderedDict()
         self._lock = Lock()
 
-    def get(self, key: Hashable) -> Remembered | None:
+    def get(self, key: Hashable) -> Reply | None:
         """Return the answer to a request, None where it is not held."""
         with self._lock:
             found = self._answers.get(key)
@@ -42,7 +38,7 @@ class Memo:
             self._answers.move_to_end(key)
         return found[0]
 
-    def put(self, key: Hashable, key_size: int, answer: Remembered) -> None:
+    def put(self, key: Hashable, key_size: int, answer: Reply) -> None:
         """Hold an answer, unless it alone would fill a hundredth of the memo.
 
         :param key_size: bytes that the key takes

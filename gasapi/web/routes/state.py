@@ -7,55 +7,65 @@ from flask import Blueprint, Response, request
 from gasapi.errors import GasapiError
 from gasapi.service.state import answer_state
 from gasapi.web.answers import remembered_form, state_json, state_line
-from gasapi.web.body import read_body, require_json
-from gasapi.web.edge import BODY, remember
+from gasapi.web.body import Environ, read_body, require_json
+from gasapi.web.edge import BODY, Direct, Reply, remember
 from gasapi.web.negotiation import CSV, JSON, accepted
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid, pointer
 from gasapi.web.query import parameter_pairs
-from gasapi.web.questions import Asked, StateReader
+from gasapi.web.questions import StateReader
 
-__all__ = ["state_routes"]
+__all__ = ["PATH", "state_answerer", "state_routes"]
+
+PATH = "/v1/state"
 
 _FORMS = (JSON, CSV)
 _JSON_HEADERS = [("Content-Type", str(JSON)), ("Vary", "Accept")]
 _CSV_HEADERS = [("Content-Type", str(CSV)), ("Vary", "Accept")]
 
 
-def state_routes(parts: Parts) -> Blueprint:
-    """Return the routes of a state."""
-    routes = Blueprint("state", __name__)
+def state_answerer(parts: Parts) -> Direct:
+    """Return what answers a GET or POST of a state, from its environ alone.
+
+    The edge calls it directly, since the routing and the contexts of Flask cost as much as the density does.
+    """
     context, limit = parts.context, parts.settings.json_limit
     reader = StateReader(context.catalogue, context.ambient_pressure)
 
-    @routes.post("/v1/state")
-    def post_state() -> Response:
-        environ = request.environ
+    def answer(environ: Environ) -> Reply:
         form = accepted(environ.get("HTTP_ACCEPT", ""), _FORMS)
-        require_json(environ)
-        if environ["QUERY_STRING"]:
-            _refuse_parameters(environ["QUERY_STRING"])
-        body = environ.get(BODY)
-        return _answer(reader.of_body(read_body(environ, limit) if body is None else body), form is CSV)
-
-    @routes.get("/v1/state")
-    def get_state() -> Response:
-        form = accepted(request.environ.get("HTTP_ACCEPT", ""), _FORMS)
-        return _answer(reader.of_query(request.environ["QUERY_STRING"]), form is CSV)
-
-    def _answer(asked: Asked, as_line: bool) -> Response:
+        if environ["REQUEST_METHOD"] == "POST":
+            require_json(environ)
+            if environ["QUERY_STRING"]:
+                _refuse_parameters(environ["QUERY_STRING"])
+            body = environ.get(BODY)
+            asked = reader.of_body(read_body(environ, limit) if body is None else body)
+        else:
+            asked = reader.of_query(environ["QUERY_STRING"])
         try:
             answered = answer_state(context, asked.question)
         except GasapiError as error:
             raise asked.problem(error) from None
-        if as_line:
-            body = again = state_line(asked, answered)
+        if form is CSV:
+            written = again = state_line(asked, answered)
             headers = _CSV_HEADERS
         else:
-            body = state_json(asked, answered)
-            again = remembered_form(body, answered)
+            written = state_json(asked, answered)
+            again = remembered_form(written, answered)
             headers = _JSON_HEADERS
-        remember(request.environ, [*headers, ("Content-Length", str(len(again)))], again)
+        remember(environ, [*headers, ("Content-Length", str(len(again)))], again)
+        return Reply([*headers, ("Content-Length", str(len(written)))], written)
+
+    return answer
+
+
+def state_routes(answer: Direct) -> Blueprint:
+    """Return the same as routes of Flask, which knows the other methods, too."""
+    routes = Blueprint("state", __name__)
+
+    @routes.route(PATH, methods=["GET", "POST"])
+    def state() -> Response:
+        headers, body = answer(request.environ)
         return Response(body, headers=headers)
 
     return routes

@@ -1,0 +1,10 @@
+"""The floor of a comparison: a Flask application that does nothing."""
+
+from flask import Flask
+
+app = Flask(__name__)
+
+
+@app.get("/")
+def nothing() -> str:
+    return ""
