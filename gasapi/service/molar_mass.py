@@ -189,7 +189,7 @@ def _possible(catalogue: Catalogue, gas: Gas, question: MolarMassQuestion, ideal
     b = 0.083 - 0.422 / tr**1.6 + omega * (0.139 - 0.172 / tr**4.2)
     departure = b * pr / tr
     ratio = m / ideal
-    if abs(departure) > _FAR_FROM_IDEAL:
+    if pr > 1.0 or abs(departure) > _FAR_FROM_IDEAL:
         return 0.1 < ratio < 4.0
     reading = DEFAULT_TOLERANCE
     if question.density_uncertainty is not None:

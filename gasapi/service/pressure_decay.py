@@ -68,7 +68,7 @@ class PressureDecayQuestion(NamedTuple):
 
 
 class PressureDecayResult(NamedTuple):
-    """The loss: kg and kg/s, both with k = 2, whether it is resolved; Pa m3/s at ``throughput_temperature`` K; m3/s at reference.
+    """The loss in kg and kg/s, both with k = 2, if it is resolved; Pa m3/s at ``throughput_temperature`` K; m3/s at reference.
 
     ``duration_to_resolve`` (s) is how long the test would have to run for a leak at the limit to equal the uncertainty.
     """

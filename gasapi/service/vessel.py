@@ -18,7 +18,7 @@ DrawOffKind = Literal["reference_volume", "mass", "amount"]
 
 
 class DrawOff(NamedTuple):
-    """A steady draw-off (m3/s at the reference condition, kg/s or mol/s), at the vessel's temperature, down to a pressure (Pa)."""
+    """A steady draw-off (m3/s at reference, kg/s or mol/s) down to a pressure (Pa) at the vessel's temperature."""
 
     kind: DrawOffKind
     value: float
@@ -45,7 +45,7 @@ class Content(NamedTuple):
 
 
 class VesselResult(NamedTuple):
-    """What is held, what was used up to the later state, what can be used down to the minimum pressure, and for how long (s)."""
+    """What is held, what was used up to the later state, what can be used down to the minimum, and for how long (s)."""
 
     held: Content = Content()
     used: Content = Content()
