@@ -1,0 +1,194 @@
+"""What the phase machinery asks of an equation of state for mixtures: derivatives in the molar densities of the components.
+
+In the variables (T, rho_1 ... rho_n) a phase equilibrium needs no density solve of its own: with psi the residual Helmholtz
+energy of a volume over R T and g_i = d psi/d rho_i, the fugacity is f_i = rho_i R T exp(g_i), and p = R T (rho + sum rho_i g_i -
+psi). Newton's method then works on densities and temperature together (Deiters and Bell, Ind. Eng. Chem. Res. 58 (2019) 2983).
+
+These are ordinary NumPy sums, whose last bits may depend on the number of rows. They may therefore feed an answer only where
+the rows are fixed by the composition (or by the composition and one state), never by how many states were asked together.
+"""
+
+from __future__ import annotations
+
+from abc import ABC, abstractmethod
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from gasapi.engine.protocol import Branch, Status
+
+__all__ = ["EnergyDerivatives", "Floats", "MixtureEnergy", "Volumetric"]
+
+Floats = NDArray[np.float64]
+"""An array of any shape."""
+
+# an isotherm is walked on these fractions of close packing before any root on it is believed
+_WALK = np.array(
+    [
+        1e-7,
+        1e-4,
+        1e-3,
+        3e-3,
+        1e-2,
+        0.02,
+        0.035,
+        0.055,
+        0.08,
+        0.11,
+        0.14,
+        0.17,
+        0.2,
+        0.23,
+        0.26,
+        0.3,
+        0.34,
+        0.38,
+        0.42,
+        0.46,
+        0.5,
+    ]
+    + [0.54, 0.58, 0.62, 0.66, 0.7, 0.74, 0.78, 0.82, 0.86, 0.9, 0.94, 0.97, 1.0]
+)
+_STEPS = 60
+_DONE = 1e-13
+
+
+class EnergyDerivatives(NamedTuple):
+    """Derivatives at m states of n components, all made dimensionless.
+
+    ``compressibility`` Z, shape (m,); ``potential`` g_i = ln(phi_i Z), (m, n); ``hessian`` rho d g_i/d rho_j at fixed T,
+    (m, n, n); ``potential_slope`` T d g_i/dT at fixed densities, (m, n); ``compressibility_slope`` T dZ/dT at fixed densities, (m,).
+    """
+
+    compressibility: Floats
+    potential: Floats
+    hessian: Floats
+    potential_slope: Floats
+    compressibility_slope: Floats
+
+
+class Volumetric(NamedTuple):
+    """Z and d(rho Z)/d rho at fixed T and composition, of the shape of the density."""
+
+    compressibility: Floats
+    stiffness: Floats
+
+
+class MixtureEnergy(ABC):
+    """An equation of state for one set of components. Immutable.
+
+    ``components`` are ids, ``critical_temperatures`` K, ``critical_pressures`` Pa and ``acentric_factors`` serve first guesses.
+    """
+
+    components: tuple[str, ...]
+    gas_constant: float
+    molar_masses: Floats
+    critical_temperatures: Floats
+    critical_pressures: Floats
+    acentric_factors: Floats
+
+    @abstractmethod
+    def derivatives(self, temperature: Floats, densities: Floats) -> EnergyDerivatives:
+        """Return all first and second derivatives.
+
+        :param temperature: K, shape (m,)
+        :param densities: molar densities of the components, mol/m3, shape (m, n); zeros are allowed
+        """
+
+    @abstractmethod
+    def volumetric(self, temperature: Floats, fractions: Floats, packing: Floats) -> Volumetric:
+        """Return Z and its stiffness on isotherms.
+
+        :param temperature: K, shape (m,)
+        :param fractions: mole fractions, shape (m, n), [-]
+        :param packing: densities over ``close_packing``, shape (m, k), [-]
+        """
+
+    @abstractmethod
+    def close_packing(self, fractions: Floats) -> Floats:
+        """Return the density from which the liquid root is sought downward, mol/m3, shape (m,).
+
+        :param fractions: mole fractions, shape (m, n), [-]
+        """
+
+    @abstractmethod
+    def lowest_temperature(self, fractions: Floats) -> Floats:
+        """Return the temperature below which sums of terms are rounding noise in the liquid, K, shape (m,)."""
+
+    def density(
+        self, temperature: Floats, pressure: Floats, fractions: Floats, branch: Branch
+    ) -> tuple[Floats, NDArray[np.int8]]:
+        """Return density roots, walking from the outside inward while the pressure rises with density.
+
+        A root behind a stretch of falling pressure lies in a false loop and is not taken (status NO_ROOT).
+
+        :param temperature: K, shape (m,)
+        :param pressure: Pa, shape (m,)
+        :param fractions: mole fractions, shape (m, n), [-]
+        :param branch: GAS upward from zero density, LIQUID downward from close packing
+        :returns: densities, mol/m3, shape (m,), and statuses
+        """
+        packed = self.close_packing(fractions)
+        target = pressure / (packed * self.gas_constant * temperature)
+        # the ideal gas may lie below the first point
+        grid = np.maximum(_WALK, 0.0)[None, :].repeat(temperature.size, axis=0)
+        grid[:, 0] = np.minimum(0.5 * target, _WALK[0])
+        z, stiffness = self.volumetric(temperature, fractions, grid)
+        excess = grid * z - target[:, None]
+        rows = np.arange(temperature.size)
+        if branch == Branch.GAS:
+            # the last point before the pressure is passed, or before the isotherm turns down
+            bad = (excess >= 0.0) | (stiffness <= 0.0)
+            stop = np.where(bad.any(axis=1), bad.argmax(axis=1), bad.shape[1])
+            first = np.maximum(stop - 1, 0)
+            second = np.minimum(stop, grid.shape[1] - 1)
+        else:
+            flipped = ((excess <= 0.0) | (stiffness <= 0.0))[:, ::-1]
+            stop = np.where(flipped.any(axis=1), flipped.argmax(axis=1), flipped.shape[1])
+            first = grid.shape[1] - np.maximum(stop, 1)
+            second = np.maximum(first - 1, 0)
+        x = grid[rows, first]
+        edge = grid[rows, second]
+        low, high = np.minimum(x, edge), np.maximum(x, edge)
+        enclosed = (excess[rows, first] * excess[rows, second] <= 0.0) & (stiffness[rows, second] > 0.0)
+        # the guarded side: Newton's steps from the outer point cannot pass the root
+        status = np.full(temperature.size, Status.NOT_CONVERGED, dtype=np.int8)
+        for _ in range(_STEPS):
+            z, stiffness = (part[:, 0] for part in self.volumetric(temperature, fractions, x[:, None]))
+            residual = x * z - target
+            with np.errstate(all="ignore"):
+                step = residual / stiffness
+            new = x - step
+            falls = ~(stiffness > 0.0)
+            done = ~falls & (np.abs(step) <= _DONE * x * (1.0 + np.abs(z) / np.where(falls, 1.0, stiffness)))
+            high = np.where(residual > 0.0, np.minimum(x, high), high)
+            low = np.where(residual > 0.0, low, np.maximum(x, low))
+            outside = ~((low <= new) & (new <= high))
+            lost = (falls | (outside & ~enclosed & ~done)) & (status == Status.NOT_CONVERGED)
+            inside = enclosed & (falls | outside)
+            lost &= ~enclosed
+            status = np.where(lost, Status.NO_ROOT, status).astype(np.int8)
+            new = np.where(inside, 0.5 * (low + high), new)
+            moving = status == Status.NOT_CONVERGED
+            x = np.where(moving & np.isfinite(new), new, x)
+            status = np.where(moving & done, Status.CONVERGED, status).astype(np.int8)
+            if not (status == Status.NOT_CONVERGED).any():
+                break
+        return x * packed, status
+
+    def log_fugacity(
+        self, temperature: Floats, pressure: Floats, fractions: Floats, branch: Branch
+    ) -> tuple[Floats, Floats, NDArray[np.int8]]:
+        """Return ln(phi_i), shape (m, n), [-], with the density, mol/m3, and status of each row; NaN where there is no root.
+
+        :param temperature: K, shape (m,)
+        :param pressure: Pa, shape (m,)
+        :param fractions: mole fractions, shape (m, n), [-]
+        :param branch: which root
+        """
+        density, status = self.density(temperature, pressure, fractions, branch)
+        d = self.derivatives(temperature, density[:, None] * fractions)
+        log_z = np.log(np.where(d.compressibility > 0.0, d.compressibility, np.nan))
+        found = status == Status.CONVERGED
+        return np.where(found[:, None], d.potential - log_z[:, None], np.nan), density, status
