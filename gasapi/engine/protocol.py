@@ -112,6 +112,13 @@ class Fluid(ABC):
         :param density: mol/m3, of the same kind and shape
         """
 
+    def rises_throughout(self, temperature: Real) -> bool | NDArray[np.bool_]:
+        """Return where an isotherm is known to have one root only; nowhere, unless an equation knows better.
+
+        :param temperature: K, a float or an array of shape (n,)
+        """
+        return False if isinstance(temperature, float) else np.zeros(len(temperature), dtype=bool)
+
     def solve(self, temperature: float, pressure: float, branch: Branch) -> Solution:
         """Return the density root of one state and the derivatives there, with the bits of ``density`` and ``pressure``.
 

@@ -138,6 +138,7 @@ class GasModels:
             source=equation.citation,
             fluid=fluid,
             fractions=self.mole_fractions,
+            molar_masses=tuple(s.molar_mass for s in self.gas.substances),
             validity=equation.validity,
             extended=equation.extended,
             uncertainty=PublishedUncertainty(equation.uncertainties, equation.validity, fluid.critical.density),
@@ -160,6 +161,7 @@ class GasModels:
             source=data.citation,
             fluid=fluid,
             fractions=fractions,
+            molar_masses=system.molar_masses,
             validity=data.validity,
             extended=data.extended,
             uncertainty=PublishedUncertainty(data.uncertainties, data.validity, fluid.reducing_density, least),
@@ -184,6 +186,7 @@ class GasModels:
             source=line.module.SOURCE,
             fluid=fluid,
             fractions=self.mole_fractions,
+            molar_masses=tuple(s.molar_mass for s in self.gas.substances),
             validity=validity,
             extended=extended,
             uncertainty=self._generalised_uncertainty(model),
@@ -196,7 +199,11 @@ class GasModels:
     def _phase_of_generalised(self, model: str, fluid: Fluid) -> PhaseJudge:
         """Return the verdict of the model itself where it has one, else of the best equation that has."""
         if GENERALISED[model].has_saturation:
-            return self._context.phases.of_generalised(fluid, self.gas, self.reference_equation, self.mole_fractions)
+            module = GENERALISED[model].module
+            mixture = None
+            if not self.gas.is_pure and hasattr(module, "mixture"):
+                mixture = module.mixture(self.gas.substances, self._context.interaction)
+            return self._context.phases.of_generalised(fluid, self.gas, self.reference_equation, self.mole_fractions, mixture)
         if self.gas.reference_id is not None:
             return self.prepared(reference.ID).phase
         if self.gas.gerg:

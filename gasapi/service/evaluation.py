@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from gasapi.engine.elementary import Array
 from gasapi.engine.phase.region import Region
-from gasapi.engine.protocol import Branch, PressureDerivatives, Status
+from gasapi.engine.protocol import Branch, PressureDerivatives, Solution, Status
 from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, Reason
 
@@ -49,13 +49,17 @@ _REASON_OF_STATUS_ARRAY: Final = np.array([_REASON_OF_STATUS[i] for i in range(4
 
 
 class Point(NamedTuple):
-    """One state: density in mol/m3 (0 where bad), reasons, region, the model's relative uncertainty (k = 2), derivatives."""
+    """One state: density in mol/m3 (0 where bad), reasons, region, the model's relative uncertainty (k = 2), derivatives.
+
+    ``surveyed`` is what the phase judge found on the way.
+    """
 
     density: float
     flags: int
     region: int
     uncertainty: float | None
     derivatives: PressureDerivatives[float] | None = None
+    surveyed: object = None
 
 
 class Block(NamedTuple):
@@ -85,9 +89,9 @@ def evaluate_float(model: PreparedModel, temperature: float, pressure: float, ma
         return Point(0.0, flags | _OUTSIDE_LIMITS, region, None)
     if not (inside.temperature_min <= temperature <= inside.temperature_max and pressure <= inside.pressure_max):
         flags |= _OUTSIDE_VALIDITY
-    region, near_dew = model.phase.survey_float(temperature, pressure, margin)
+    region, near_dew, surveyed = model.phase.survey_float(temperature, pressure, margin)
     if region == _TWO_PHASE_REGION:
-        return Point(0.0, flags | _TWO_PHASE, region, None)
+        return Point(0.0, flags | _TWO_PHASE, region, None, None, surveyed)
     if region == _SOLID_REGION:
         return Point(0.0, flags | _SOLID_POSSIBLE, region, None)
     if region == _LIQUID_REGION:
@@ -96,8 +100,7 @@ def evaluate_float(model: PreparedModel, temperature: float, pressure: float, ma
             return Point(0.0, flags | _OUTSIDE_LIMITS, region, None)
     elif region == _UNKNOWN_REGION:
         flags |= _PHASE_UNKNOWN
-    branch = Branch.LIQUID if region == _LIQUID_REGION else Branch.GAS
-    root, derivatives = model.fluid.solve(temperature, pressure, branch)
+    root, derivatives = _solve_float(model, temperature, pressure, Branch.LIQUID if region == _LIQUID_REGION else Branch.GAS)
     if root.status != 0:
         return Point(0.0, flags | _REASON_OF_STATUS[int(root.status)], region, None)
     density = root.density
@@ -109,7 +112,55 @@ def evaluate_float(model: PreparedModel, temperature: float, pressure: float, ma
     uncertainty = model.uncertainty.at(temperature, pressure, density)
     if model.generalised and not uncertainty <= GOOD_UNCERTAINTY:
         flags |= _UNCERTAINTY_LARGE
-    return Point(density, flags, region, uncertainty, derivatives)
+    return Point(density, flags, region, uncertainty, derivatives, surveyed)
+
+
+def _other(branch: Branch) -> Branch:
+    return Branch.LIQUID if branch == Branch.GAS else Branch.GAS
+
+
+def _solve_float(model: PreparedModel, temperature: float, pressure: float, branch: Branch) -> Solution:
+    """Return the root of a branch; where both branches have one in a single phase, that of the lower Gibbs energy."""
+    fluid = model.fluid
+    solution = fluid.solve(temperature, pressure, branch)
+    if not model.phase.compares_roots or fluid.rises_throughout(temperature):
+        return solution
+    other = fluid.density(temperature, pressure, _other(branch))
+    if other.status != 0:
+        return solution
+    first = solution.root
+    if first.status == 0:
+        if first.density == other.density:
+            return solution
+        here = fluid.residual_gibbs(temperature, first.density)
+        if not fluid.residual_gibbs(temperature, other.density) < here:
+            return solution
+    return fluid.solve(temperature, pressure, _other(branch))
+
+
+def _solve_block(model: PreparedModel, temperature: Array, pressure: Array, branch: Branch) -> tuple[Array, NDArray[np.int8]]:
+    """Return density and status of rows, root for root as ``_solve_float`` does."""
+    fluid = model.fluid
+    root = fluid.density(temperature, pressure, branch)
+    status = cast("NDArray[np.int8]", root.status)
+    if not model.phase.compares_roots:
+        return root.density, status
+    rows = np.flatnonzero(~np.asarray(fluid.rises_throughout(temperature)))
+    if rows.size == 0:
+        return root.density, status
+    t, p = temperature.take(rows), pressure.take(rows)
+    other = fluid.density(t, p, _other(branch))
+    there = cast("NDArray[np.int8]", other.status) == 0
+    here = status.take(rows) == 0
+    better = there & ~here
+    both = np.flatnonzero(there & here & (other.density != root.density.take(rows)))
+    if both.size:
+        ours = fluid.residual_gibbs(t.take(both), root.density.take(rows.take(both)))
+        better[both] = fluid.residual_gibbs(t.take(both), other.density.take(both)) < ours
+    density, status = root.density.copy(), status.copy()
+    density[rows[better]] = other.density[better]
+    status[rows[better]] = 0
+    return density, status
 
 
 def evaluate_block(model: PreparedModel, temperature: Array, pressure: Array, margin: float) -> Block:
@@ -156,9 +207,9 @@ def evaluate_block(model: PreparedModel, temperature: Array, pressure: Array, ma
     for branch, chosen in ((Branch.GAS, solvable & ~liquid), (Branch.LIQUID, solvable & liquid)):
         some = np.flatnonzero(chosen)
         if some.size:
-            root = model.fluid.density(t.take(some), p.take(some), branch)
-            row_flags[some] |= _REASON_OF_STATUS_ARRAY.take(cast("NDArray[np.int8]", root.status))
-            row_density[some] = root.density
+            found, status = _solve_block(model, t.take(some), p.take(some), branch)
+            row_flags[some] |= _REASON_OF_STATUS_ARRAY.take(status)
+            row_density[some] = found
     good = np.flatnonzero((row_flags & BAD) == 0)
     if good.size:
         tg, pg, rho = t.take(good), p.take(good), row_density.take(good)

@@ -12,9 +12,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from gasapi.engine.elementary import Array
+from gasapi.engine.models.cubic import CubicMixture
 from gasapi.engine.models.gerg_2008 import GergFluid
 from gasapi.engine.models.reference import ReferenceFluid
 from gasapi.engine.phase.bubble_dew import BubbleDewLines
+from gasapi.engine.phase.mixture import mixture_phase
 from gasapi.engine.phase.pseudo_pure import PseudoPureVerdict
 from gasapi.engine.phase.pure import PureVerdict, reference_verdict
 from gasapi.engine.phase.region import Region
@@ -27,6 +29,7 @@ from gasapi.gases.records import ReferenceEquation
 from gasapi.service.answers import PhaseWarning
 from gasapi.service.cache import BoundedCache
 from gasapi.service.gas import ResolvedGas
+from gasapi.service.mixture_phase import MixtureJudge
 from gasapi.service.prepared import Margins, PhaseJudge
 
 __all__ = ["NoVerdict", "PhaseLibrary", "PureJudge", "words_of"]
@@ -96,19 +99,26 @@ class PureJudge:
     :param verdict: the engine's verdict
     """
 
+    compares_roots = False
+
     def __init__(self, verdict: PhaseVerdict) -> None:
         self.model = verdict.model
         self.verdict = verdict
         self.covers = verdict.covers
         self.region_float = verdict.region_float
-        self.survey_float = verdict.survey_float
         self.survey_block = verdict.survey_block
         self.refine_float = verdict.refine_float
         self.refine_block = verdict.refine_block
         self.near_critical_float = verdict.near_critical_float
         self.near_critical_block = verdict.near_critical_block
 
-    def margins(self, temperature: float, pressure: float, density: float | None, region: int, margin: float) -> Margins:
+    def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool, object]:
+        """Return region and nearness of one state."""
+        return (*self.verdict.survey_float(temperature, pressure, margin), None)
+
+    def margins(
+        self, temperature: float, pressure: float, density: float | None, region: int, margin: float, surveyed: object
+    ) -> Margins:
         """Return the margins and warnings of one state."""
         margins = self.verdict.margins(temperature, pressure)
         signs = self.verdict.signs(temperature, pressure, density, region, margin, margins)
@@ -119,6 +129,7 @@ class NoVerdict:
     """The phase of a gas for which no equation can tell it: unknown everywhere."""
 
     model: str | None = None
+    compares_roots = True
 
     def covers(self, temperature: float, pressure: float) -> bool:
         """Return that no region can be told."""
@@ -128,9 +139,9 @@ class NoVerdict:
         """Return unknown."""
         return int(Region.UNKNOWN)
 
-    def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool]:
+    def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool, object]:
         """Return unknown."""
-        return int(Region.UNKNOWN), False
+        return int(Region.UNKNOWN), False, None
 
     def survey_block(self, temperature: Array, pressure: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
         """Return unknown for each row."""
@@ -152,7 +163,9 @@ class NoVerdict:
         """Return that nothing is known of it."""
         return np.zeros(temperature.size, dtype=bool)
 
-    def margins(self, temperature: float, pressure: float, density: float | None, region: int, margin: float) -> Margins:
+    def margins(
+        self, temperature: float, pressure: float, density: float | None, region: int, margin: float, surveyed: object
+    ) -> Margins:
         """Return no margins."""
         return Margins(None, None, None)
 
@@ -177,19 +190,24 @@ class PhaseLibrary:
         """Return the judge of a composition by GERG-2008; a pure gas freezes as its reference equation says."""
         if fluid.critical is not None:
             return self._pure(fluid, gas, equation, published=True)
-        return NoVerdict()
+        return MixtureJudge(fluid.model, lambda: mixture_phase(fluid.system, fluid.fractions))
 
     def of_generalised(
-        self, fluid: Fluid, gas: ResolvedGas, equation: ReferenceEquation | None, fractions: tuple[float, ...]
+        self,
+        fluid: Fluid,
+        gas: ResolvedGas,
+        equation: ReferenceEquation | None,
+        fractions: tuple[float, ...],
+        mixture: CubicMixture | None,
     ) -> PhaseJudge:
         """Return the judge of a gas by a generalised equation that has a saturation line of its own."""
         if gas.is_pure:
             return self._pure(fluid, gas, equation)
-        return NoVerdict()
+        if mixture is None:
+            return NoVerdict()
+        return MixtureJudge(fluid.model, lambda: mixture_phase(mixture, fractions))
 
-    def _pure(
-        self, fluid: Fluid, gas: ResolvedGas, equation: ReferenceEquation | None, published: bool = False
-    ) -> PhaseJudge:
+    def _pure(self, fluid: Fluid, gas: ResolvedGas, equation: ReferenceEquation | None, published: bool = False) -> PhaseJudge:
         substance = gas.substances[0]
         curve = self._curves.get_or_make((fluid.model, substance), lambda: SaturationCurve(fit_saturation(fluid)))
         triple = substance.triple_temperature

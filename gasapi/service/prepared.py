@@ -53,6 +53,8 @@ class PhaseJudge(Protocol):
     """
 
     model: str | None
+    compares_roots: bool
+    """Whether an isotherm may have two roots in one phase, of which that with the lower Gibbs energy is meant."""
 
     def covers(self, temperature: float, pressure: float) -> bool:
         """Return whether a region can be told there at all, even where the density model makes no claim."""
@@ -62,8 +64,8 @@ class PhaseJudge(Protocol):
         """Return the region, without the density."""
         ...
 
-    def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool]:
-        """Return region and nearness of one state."""
+    def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool, object]:
+        """Return region and nearness of one state, and what ``margins`` can use of the work (None where nothing)."""
         ...
 
     def survey_block(self, temperature: Array, pressure: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
@@ -86,7 +88,9 @@ class PhaseJudge(Protocol):
         """Return the same for rows."""
         ...
 
-    def margins(self, temperature: float, pressure: float, density: float | None, region: int, margin: float) -> Margins:
+    def margins(
+        self, temperature: float, pressure: float, density: float | None, region: int, margin: float, surveyed: object
+    ) -> Margins:
         """Return the margins and warnings of one state, for an answer."""
         ...
 
@@ -95,7 +99,7 @@ class PhaseJudge(Protocol):
 class PreparedModel:
     """A model for one gas. Immutable.
 
-    ``fractions`` are mole fractions in the order of the gas's components; ``flags`` are reasons that hold at every state;
+    ``fractions`` are mole fractions and ``molar_masses`` (kg/mol) those of the model, in the order of the gas's components; ``flags`` are reasons that hold at every state;
     ``generalised`` models have no published range of their own; ``gas_only`` models have no liquid.
     """
 
@@ -104,6 +108,7 @@ class PreparedModel:
     source: str
     fluid: Fluid
     fractions: tuple[float, ...]
+    molar_masses: tuple[float, ...]
     validity: Limits
     extended: Limits
     uncertainty: UncertaintyRule

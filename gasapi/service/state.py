@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Final, NamedTuple
 
-from gasapi.engine.phase.region import REGION_NAMES
+from gasapi.engine.phase.region import REGION_NAMES, Region
 from gasapi.service.answers import GasAnswer, ModelAnswer, PhaseAnswer, QualityAnswer, StateAnswer
 from gasapi.service.context import Context, GasModels
 from gasapi.service.evaluation import Point, evaluate_float
@@ -12,6 +12,7 @@ from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, Reason, quality_of
 from gasapi.service.questions import StateQuestion
 from gasapi.service.selection import choose
+from gasapi.service.two_phase import split
 from gasapi.service.uncertainty import expanded_density_uncertainty
 
 __all__ = ["AMBIENT_SHARE", "Answered", "answer_state", "solve_state"]
@@ -19,8 +20,11 @@ __all__ = ["AMBIENT_SHARE", "Answered", "answer_state", "solve_state"]
 AMBIENT_SHARE: Final = 0.1
 """The part of the absolute pressure above which an assumed ambient lowers the level."""
 
+_TWO_PHASE: Final = int(Reason.TWO_PHASE)
+_TWO_PHASE_ACCEPTED: Final = int(Reason.TWO_PHASE_ACCEPTED)
 _NEAR_CRITICAL: Final = int(Reason.NEAR_CRITICAL)
 _INPUT_BAD: Final = int(Reason.INPUT_BAD)
+_UNKNOWN: Final = int(Region.UNKNOWN)
 _CRITICAL_AMPLIFICATION_MOST: Final = 1e3
 
 
@@ -65,9 +69,20 @@ def solve_state(context: Context, question: StateQuestion) -> StateAnswer:
     flags = point.flags | assumed
     bad = flags & BAD != 0
     molar_mass = model.fluid.molar_mass
+    two_phase = None
+    if flags & BAD == _TWO_PHASE and question.accept_two_phase:
+        two_phase = split(model, gas.components, temperature, pressure)
+        if two_phase is not None:
+            flags = flags & ~_TWO_PHASE | _TWO_PHASE_ACCEPTED
     density = z = volume = slope_p = slope_t = expanded = None
     uncertainty = point.uncertainty
-    if not bad:
+    if two_phase is not None:
+        bad = False
+        molar = two_phase.density
+        density = molar * molar_mass
+        volume = 1.0 / molar
+        z = pressure / (molar * model.fluid.gas_constant * temperature)
+    elif not bad:
         assert point.derivatives is not None
         molar = point.density
         _, p_rho, p_t = point.derivatives
@@ -92,11 +107,12 @@ def solve_state(context: Context, question: StateQuestion) -> StateAnswer:
         density_pressure=slope_p,
         density_temperature=slope_t,
         density_expanded_uncertainty=expanded,
-        phase=phase_answer(model, temperature, pressure, point, bad, margin),
+        phase=phase_answer(model, temperature, pressure, point, margin),
         model=model_answer(model, temperature, pressure, point, uncertainty, choice.because),
         quality=quality_of(flags),
         cautions=cautions,
         data=context.data,
+        two_phase=None if two_phase is None else two_phase.answer,
     )
 
 
@@ -136,14 +152,12 @@ def model_answer(
     )
 
 
-def phase_answer(
-    model: PreparedModel, temperature: float, pressure: float, point: Point, bad: bool, margin: float
-) -> PhaseAnswer:
+def phase_answer(model: PreparedModel, temperature: float, pressure: float, point: Point, margin: float) -> PhaseAnswer:
     """Return what an answer says of the phase at one state."""
     judge = model.phase
-    if point.flags & _INPUT_BAD or not judge.covers(temperature, pressure):
+    if point.flags & _INPUT_BAD or point.region == _UNKNOWN:
         return PhaseAnswer(REGION_NAMES[point.region], None, None, None, judge.model, ())
-    m = judge.margins(temperature, pressure, None if bad else point.density, point.region, margin)
+    m = judge.margins(temperature, pressure, None if point.flags & BAD else point.density, point.region, margin, point.surveyed)
     return PhaseAnswer(
         REGION_NAMES[point.region], m.dew_point_temperature, m.margin_temperature, m.margin_pressure, judge.model, m.warnings
     )

@@ -17,7 +17,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from gasapi.engine.critical_point import find_critical_point
-from gasapi.engine.elementary import Array
+from gasapi.engine.elementary import Array, Real
 from gasapi.engine.estimate import DensityEstimate
 from gasapi.engine.helmholtz import TermLayout, TermSum
 from gasapi.engine.models.helmholtz_fluid import HelmholtzFluid, unbounded
@@ -153,6 +153,10 @@ class GergFluid(HelmholtzFluid):
         tau, delta = find_critical_point(self._energy, 1.0, 1.0)
         t, d = self.reducing_temperature / tau, self.reducing_density * delta
         return CriticalPoint(t, self.stiffness(t, d).pressure, d)
+
+    def rises_throughout(self, temperature: Real) -> bool | NDArray[np.bool_]:
+        """Return where an isotherm has one root only; see ``Fluid.rises_throughout``."""
+        return self.reducing_temperature < _GUARDED_ABOVE * temperature
 
     def _search_float(self, temperature: float, pressure: float, branch: Branch) -> tuple[float, float, float, bool]:
         if self.reducing_temperature < _GUARDED_ABOVE * temperature:
