@@ -22,6 +22,7 @@ _KEEP_ALIVE = 65  # s; longer than the 60 s for which proxies commonly keep conn
 _GRACE = 30  # s that requests have to finish when the service is stopped
 _SILENCE = 120  # s after which a worker that does not answer is replaced
 _REQUEST_LINE = 8190  # bytes, the most that gunicorn takes; a mixture in a query is long
+_COLLECT_AFTER = (20_000, 20, 20)  # objects and turns; answers hold no cycles, so that there is little to collect
 _MEMORY_FOLDER = Path("/dev/shm")
 
 # numbers are computed in one thread for each request; threads of the linear algebra library would only cost
@@ -167,6 +168,7 @@ def _serve(server_settings: dict[str, Any], metrics_folder: Path | None) -> None
             # what was built now stays; the collector need not look through it again and again
             gc.collect()
             gc.freeze()
+            gc.set_threshold(*_COLLECT_AFTER)
             return app
 
     Server().run()

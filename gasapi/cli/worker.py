@@ -40,6 +40,33 @@ class _Wait(gevent.Timeout):
         return super().__exit__(kind, value, traceback)
 
 
+class _Joining:
+    """A socket that holds the head of an answer back until its body comes, so that both leave in one packet and one call."""
+
+    def __init__(self, connection: Any) -> None:
+        self._connection = connection
+        self._head: bytes | None = b""
+
+    def __getattr__(self, name: str) -> Any:
+        return getattr(self._connection, name)
+
+    def sendall(self, data: bytes) -> None:
+        """Send data, the first of them together with the next."""
+        if self._head is None:
+            self._connection.sendall(data)
+        elif self._head:
+            head, self._head = self._head, None
+            self._connection.sendall(head + data)
+        else:
+            self._head = data
+
+    def flush(self) -> None:
+        """Send what is held back."""
+        if self._head:
+            head, self._head = self._head, None
+            self._connection.sendall(head)
+
+
 class CooperativeWorker(GeventWorker):
     """Serves each connection in a greenlet.
 
@@ -65,6 +92,14 @@ class CooperativeWorker(GeventWorker):
         """Serve a connection."""
         client.settimeout(self.cfg.keepalive + _READ_MARGIN)
         AsyncWorker.handle(self, listener, client, addr)
+
+    def handle_request(self, listener_name: Any, req: Any, sock: Any, addr: Any) -> Any:
+        """Answer one request."""
+        joining = _Joining(sock)
+        try:
+            return super().handle_request(listener_name, req, joining, addr)
+        finally:
+            joining.flush()
 
     def run(self) -> None:
         """Serve until told to stop, then close what is idle and let the rest finish."""

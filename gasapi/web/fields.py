@@ -6,7 +6,7 @@ its description stand side by side. Fields of objects check the whole object in 
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from difflib import get_close_matches
 from typing import Any, ClassVar, Literal, NamedTuple, Never
 
@@ -97,6 +97,11 @@ class Member(Field[Any]):
         if value is None:
             raise self.make_error("null", expected=self.expected)
         return self._read(value)
+
+    @property
+    def reader(self) -> Callable[[Any], Any]:
+        """What reads a value that is neither missing nor null."""
+        return self._read
 
     def _read(self, value: Any) -> Any:
         """Return what the member means; ``value`` is any JSON value but null.
