@@ -30,15 +30,14 @@ from gasapi.engine.protocol import Root, Status
 __all__ = ["GUARDED_STEP", "ReducedIsotherm", "solve_block", "solve_float"]
 
 _MOST_STEPS: Final = 120
-# error left after a step of relative size e, with bend k = delta F''/(2 F'): k^2 e^3 (Halley), k e^2 (Newton)
-_HALLEY_STEP: Final = 1e-6
+# error left after a step of relative size e, with bend k = delta F''/(2 F'): k^2 e^3 (Halley), k e^2 (Newton); where
+# e (1 + k) is below the bound, that is 3e-17 at most
+_HALLEY_STEP: Final = 6e-6
 _NEWTON_STEP: Final = 1e-8
 # longest step of a guarded search, in reduced density: a fifth of the least width between the branches at T_r/T = 1.05
 GUARDED_STEP: Final = 0.15
 # relative width at which a bracket cannot shrink any further
 _CLOSED: Final = 4.5e-16
-# above this fraction of rows at work a block is not worth compressing
-_COMPRESS: Final = 0.75
 
 
 class ReducedIsotherm(Protocol):
@@ -119,58 +118,91 @@ def solve_block(  # type: ignore[no-untyped-def]
     status = np.full(n, Status.NOT_CONVERGED, dtype=np.int8)
     if n == 0:
         return Root(result, status)
-    exact = isotherm.exact_third
+    halley = _HALLEY_STEP if isotherm.exact_third else _NEWTON_STEP
     rows = np.arange(n)
-    at_work = np.ones(n, dtype=bool)
-    enough = np.where(guarded, _NEWTON_STEP, _HALLEY_STEP if exact else _NEWTON_STEP)
-    enclosed = ~guarded
     x = start
+    free = bool(guarded.any())
+    # where every row is bracketed from the start, two of the decisions are the same for all
+    enclosed = ~guarded
+    enough: Array | float = np.where(guarded, _NEWTON_STEP, halley) if free else halley
     with np.errstate(all="ignore"):
         for _ in range(_MOST_STEPS):
             first, second, third = isotherm.euler(x)
-            residual = x + x * first - target
-            slope = 1.0 + first + second
+            residual = x * first
+            residual += x
+            residual -= target
+            slope = 1.0 + first
+            slope += second
             above = residual > 0.0
-            high = np.where(above, x, high)
-            low = np.where(above, low, x)
-            bounded = high < math.inf
-            enclosed = enclosed | ((low > 0.0) & bounded)
+            if free:
+                high = np.where(above, x, high)
+                low = np.where(above, low, x)
+                enclosed = enclosed | ((low > 0.0) & (high < math.inf))
+            bend = second + third
+            bend *= 0.5
+            bend /= slope
+            ratio = slope * x
+            np.divide(residual, ratio, out=ratio)
+            damp = ratio * bend
+            np.subtract(1.0, damp, out=damp)
+            curved = damp > 0.5
+            if free:
+                curved &= enclosed
+            step = ratio / damp
+            if not curved.all():
+                step = np.where(curved, step, ratio)
+            np.abs(bend, out=bend)
+            bend += 1.0
+            bend *= np.abs(step)
             rising = slope > 0.0
-            bend = 0.5 * (second + third) / slope
-            ratio = residual / (slope * x)
-            damp = 1.0 - ratio * bend
-            step = np.where((damp > 0.5) & enclosed, ratio / damp, ratio)
-            done = rising & (np.abs(step) * (1.0 + np.abs(bend)) <= enough)
-            new = x - x * step
-            finished = at_work & done
-            result[rows[finished]] = new[finished]
-            status[rows[finished]] = Status.CONVERGED
-            at_work &= ~done
-            lost = at_work & ~rising & ~enclosed
-            result[rows[lost]] = x[lost]
-            status[rows[lost]] = Status.NO_ROOT
-            at_work &= ~lost
+            done = bend <= enough
+            done &= rising
+            step *= x
+            new = x - step
+            finished = np.flatnonzero(done)
+            if finished.size:
+                at = rows.take(finished)
+                result[at] = new.take(finished)
+                status[at] = Status.CONVERGED
+                if finished.size == rows.size:
+                    return Root(result, cast("NDArray[np.int8]", status))
+                # the rest alone goes on, and all that follows is done for the rest alone
+                keep = np.flatnonzero(~done)
+                isotherm = isotherm.take(keep)
+                rows, x, new, target = rows.take(keep), x.take(keep), new.take(keep), target.take(keep)
+                low, high, above, rising = low.take(keep), high.take(keep), above.take(keep), rising.take(keep)
+                if free:
+                    enclosed, enough = enclosed.take(keep), cast(Array, enough).take(keep)
+            if not free:
+                high = np.where(above, x, high)
+                low = np.where(above, low, x)
+            bounded = high < math.inf
             double = 2.0 * x
-            new = np.where(new > double, double, new)
-            outside = enclosed & ~((low < new) & (new < high)) | ~rising
-            if not enclosed.all():
+            new = np.minimum(new, double)
+            outside = ~((low < new) & (new < high))
+            if free:
+                outside &= enclosed
                 short = np.fmin(np.fmax(new, x - GUARDED_STEP), x + GUARDED_STEP)
                 new = np.where(enclosed, new, np.where(short <= 0.0, 0.5 * x, short))
-            new = np.where(outside, np.where(bounded, 0.5 * (low + high), double), new)
-            closed = at_work & (high < math.inf) & (high - low <= _CLOSED * high)
-            result[rows[closed]] = x[closed]
-            status[rows[closed]] = Status.CONVERGED
-            at_work &= ~closed
-            left = int(np.count_nonzero(at_work))
-            if left == 0:
-                break
-            if left <= _COMPRESS * at_work.size:
-                keep = np.flatnonzero(at_work)
+            outside |= ~rising
+            if outside.any():
+                new = np.where(outside, np.where(bounded, 0.5 * (low + high), double), new)
+            ended = bounded & (high - low <= _CLOSED * high)
+            lost = ~(rising | enclosed) if free else None
+            if ended.any() or (lost is not None and lost.any()):
+                status[rows[ended]] = Status.CONVERGED
+                if lost is not None:
+                    status[rows[lost]] = Status.NO_ROOT
+                    ended |= lost
+                result[rows[ended]] = x[ended]
+                keep = np.flatnonzero(~ended)
                 isotherm = isotherm.take(keep)
-                rows, x, new = rows.take(keep), x.take(keep), new.take(keep)
-                target, low, high = target.take(keep), low.take(keep), high.take(keep)
-                enclosed, enough = enclosed.take(keep), enough.take(keep)
-                at_work = np.ones(keep.size, dtype=bool)
-            x = np.where(at_work, new, x)
-    result[rows[at_work]] = x[at_work]
+                rows, new, target = rows.take(keep), new.take(keep), target.take(keep)
+                low, high = low.take(keep), high.take(keep)
+                if free:
+                    enclosed, enough = enclosed.take(keep), cast(Array, enough).take(keep)
+            x = new
+            if rows.size == 0:
+                break
+    result[rows] = x
     return Root(result, cast("NDArray[np.int8]", status))

@@ -153,8 +153,8 @@ class Isotherm(Generic[Real]):
 
     @property
     def exact_third(self) -> bool:
-        """Whether the third derivative is complete; that of non-analytic terms is left out."""
-        return not self._layout.critical_terms
+        """Whether the third derivative is complete: it always is."""
+        return True
 
     def take(self, rows: NDArray[np.intp]) -> Isotherm[Array]:
         """Return the isotherms of some rows only."""
@@ -170,10 +170,11 @@ class Isotherm(Generic[Real]):
         routine: Any = layout.routines.euler_float if type(delta) is float else layout.routines.euler_block
         first, second, third = routine(delta, self._coefficients)
         if layout.critical_terms:
-            critical = layout.critical_terms.evaluate(delta, self._tau)
+            critical = layout.critical_terms.euler(delta, self._tau)
             if critical is not None:
-                first = first + critical.first
-                second = second + critical.second
+                first = first + critical[0]
+                second = second + critical[1]
+                third = third + critical[2]
         return first, second, third
 
     def first_of_slope(self, delta: Real) -> Real:
@@ -185,9 +186,9 @@ class Isotherm(Generic[Real]):
         routine: Any = layout.routines.first_float if type(delta) is float else layout.routines.first_block
         total = routine(delta, self._coefficients)
         if layout.critical_terms:
-            critical = layout.critical_terms.evaluate(delta, self._tau)
+            critical = layout.critical_terms.first_tau(delta, self._tau)
             if critical is not None:
-                total = total + critical.first_tau
+                total = total + critical
         return cast(Real, total)
 
     def value(self, delta: Real) -> Real:
@@ -199,7 +200,7 @@ class Isotherm(Generic[Real]):
         routine: Any = layout.routines.value_float if type(delta) is float else layout.routines.value_block
         total = routine(delta, self._coefficients)
         if layout.critical_terms:
-            critical = layout.critical_terms.evaluate(delta, self._tau)
+            critical = layout.critical_terms.value(delta, self._tau)
             if critical is not None:
-                total = total + critical.value
+                total = total + critical
         return cast(Real, total)
