@@ -97,9 +97,9 @@ class _Program:
             case ast.Constant(float() | int() as number):
                 return float(number)
             case ast.UnaryOp(ast.USub(), operand):
-                number = self.value(operand)
-                assert isinstance(number, float)
-                return -number
+                constant = self.value(operand)
+                assert isinstance(constant, float)
+                return -constant
             case ast.Name(name):
                 return self._names[name]
             case ast.BinOp(left, operator, right):
