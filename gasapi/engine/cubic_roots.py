@@ -85,6 +85,8 @@ class CubicRoots:
         :param b: b p/(R T), not negative, [-]
         :param branch: which end of the isotherm
         """
+        if not math.isfinite(theta + b):
+            return Packing(math.nan, Status.NOT_CONVERGED)
         u = self._u
         w = self._w
         one_sided = theta <= self._critical_attraction
@@ -168,8 +170,9 @@ class CubicRoots:
             eta[rows], done[rows] = _from_below_block(e2[rows], e1[rows], e0[rows], b[rows], ceiling[rows])
 
         status = np.where(~one_sided & ((eta > self._critical_packing) == from_gas), Status.NO_ROOT, Status.CONVERGED)
-        status = np.where(done, status, Status.NOT_CONVERGED)
-        return PackingBlock(eta, status.astype(np.int8))
+        finite = np.isfinite(theta + b)
+        status = np.where(done & finite, status, Status.NOT_CONVERGED)
+        return PackingBlock(np.where(finite, eta, math.nan), status.astype(np.int8))
 
 
 def _from_above(e2: float, c1: float, c0: float, b: float, inflection: float, spread: float) -> tuple[float, bool]:

@@ -8,11 +8,13 @@ methane) and a reference (n-octane, acentric factor 0.3978); see ``gasapi.engine
 (eq. 2 of the paper; its "Z1" is (Zr - Z0)/0.3978). At equal p_r and T_r the volumes blend in the same way,
 V = (1 - h) V0 + h Vr, so the density is explicit in temperature and pressure and has a step of its own. The pressure at a given
 density is the p_r at which the blended volume meets it, and its derivatives follow from the implicit function; densities
-at which the blend has no branch have no pressure (NaN).
+at which the blend has no branch have no pressure (NaN). Within 3e-7 of Tc, between the critical points of the two fluids,
+and within 1 % of it for a negative acentric factor one density can belong to two pressures; either may be given then.
 
 Where one of the fluids has no root on the branch that is asked for, the answer is "no root", and never a blend of a gas with a
-liquid. That costs a sliver beside the saturation line, within 1.5 % of its pressure and above T_r = 0.96, where one fluid's
-branch has ended already. A blend that is not a stable state (far extrapolated in omega) is "not applicable".
+liquid. For omega from 0 to 0.45 that costs a sliver within 1 % of the saturation pressure above T_r = 0.96, where one fluid's
+branch has ended already; outside it costs more (the gas of hydrogen within 5 % from T_r = 0.85, the liquid of omega = 0.6
+within 5 % from 0.95). A blend that would not be a stable state (extrapolated in omega) is "not applicable".
 
 The saturation line is the vapour-pressure correlation of the same paper. Mixtures by the paper's own mixing rules:
 Vc_i = (0.2905 - 0.085 omega_i) R Tc_i/pc_i, Vc = 1/8 sum x_i x_j (Vc_i^(1/3) + Vc_j^(1/3))^3,
@@ -96,9 +98,11 @@ _MAX_STEPS: Final = 30
 # the steps are Newton's: an error of this size is squared by the last one
 _MATCH: Final = 1e-9
 _VOLUME: Final = 1e-14
+_RESOLUTION: Final = 1e-15
 _PRESSURE_MAX: Final = 6e4
 _PRESSURE_MIN: Final = 1e-14
 _MAX_SEARCH_STEPS: Final = 200
+_CRITICAL_REGION: Final = 0.99
 _VAPOUR_STEPS: Final = 8
 _NAN: Final = math.nan
 
@@ -236,11 +240,13 @@ class LeeKesler(Fluid):
         h = self._h
         x0 = simple.density if simple.density > _TINY else _TINY
         xr = reference.density if reference.density > _TINY else _TINY
-        volume = (1.0 - h) / x0 + h / xr
-        softness = (1.0 - h) / (x0 * x0 * simple.slope) + h / (xr * xr * reference.slope)
+        ratio = x0 / xr
+        # volume and compressibility of the blend, in units of the simple fluid's volume
+        volume = 1.0 - h + h * ratio
+        softness = (1.0 - h) / simple.slope + h * (ratio * ratio) / reference.slope
         if not (volume > 0.0 and softness > 0.0):
             return Root(_NAN, Status.NOT_APPLICABLE)
-        return Root(self._unit / volume, Status.CONVERGED)
+        return Root(self._unit * x0 / volume, Status.CONVERGED)
 
     def _density_block(self, temperature: Array, pressure: Array, branch: Branch) -> tuple[Array, NDArray[np.int8]]:
         t, p = temperature / self._tc, pressure / self._pc
@@ -250,32 +256,34 @@ class LeeKesler(Fluid):
         xr, sloper, statusr = self._reference.roots(t, p, branch)
         h = self._h
         x0, xr = np.maximum(x0, _TINY), np.maximum(xr, _TINY)
-        volume = (1.0 - h) / x0 + h / xr
-        softness = (1.0 - h) / (x0 * x0 * slope0) + h / (xr * xr * sloper)
+        ratio = x0 / xr
+        volume = 1.0 - h + h * ratio
+        softness = (1.0 - h) / slope0 + h * (ratio * ratio) / sloper
         status = np.where(status0 != Status.CONVERGED, status0, statusr)
         unstable = ~((volume > 0.0) & (softness > 0.0)) & (status == Status.CONVERGED)
         status[cold | unstable] = Status.NOT_APPLICABLE
-        return np.where(status == Status.CONVERGED, self._unit / volume, _NAN), status.astype(np.int8)
+        return np.where(status == Status.CONVERGED, self._unit * x0 / volume, _NAN), status.astype(np.int8)
 
     def pressure(self, temperature: Real, density: Real) -> PressureDerivatives[Real]:
         """Return pressure and its derivatives; see ``Fluid.pressure``. NaN where the blend has no branch."""
         t = temperature / self._tc
-        x0, xr, p = self._match(t, density / self._unit)
+        x = density / self._unit
+        x0, xr, p = self._match(t, x)
         h = self._h
+        v0, vr = x / x0, x / xr
         _, slope0, _, _ = terms(self._simple.isotherm(t), x0)
         _, sloper, _, _ = terms(self._reference.isotherm(t), xr)
-        k0 = (1.0 - h) / (x0 * x0 * slope0)
-        kr = h / (xr * xr * sloper)
+        k0 = (1.0 - h) * (v0 * v0) / slope0
+        kr = h * (vr * vr) / sloper
         # for each fluid F' dx = dp_r/T_r - (p_r/T_r + T_r x dZ/dT_r) dT_r/T_r, and dV = -((1 - h) dx0/x0^2 + h dxr/xr^2)
         softness = k0 + kr
         f = p / t
         expansion = k0 * (f + x0 * self._simple.compressibility_slope(t, x0)) + kr * (
             f + xr * self._reference.compressibility_slope(t, xr)
         )
-        v = self._unit / density
         return PressureDerivatives(
             p * self._pc,
-            v * v * temperature * GAS_CONSTANT / softness,
+            GAS_CONSTANT * temperature / softness,
             self._pc / self._tc * (expansion / softness),
         )
 
@@ -286,9 +294,9 @@ class LeeKesler(Fluid):
         if type(x0) is float:
             return self._blend(t, x0, xr) if x0 == x0 else x0
         # the logarithm takes no NaN
-        found = x0 == x0
-        x0, xr = np.where(found, x0, 1.0), np.where(found, xr, 1.0)
-        return cast(Real, np.where(found, self._blend(t, x0, xr), _NAN))
+        found = ~np.isnan(cast(Array, x0))
+        first, second = np.where(found, x0, 1.0), np.where(found, xr, 1.0)
+        return cast(Real, np.where(found, self._blend(cast(Array, t), first, second), _NAN))
 
     def _blend(self, temperature: Real, simple_density: Real, reference_density: Real) -> Real:
         """Return ln(phi) of the blend from the two fluids' densities, all reduced, [-]."""
@@ -357,7 +365,6 @@ class LeeKesler(Fluid):
         low0, high0 = _bracket(self._simple, temperature, branch)
         lowr, highr = _bracket(self._reference, temperature, branch)
         first, second = self._simple.isotherm(temperature), self._reference.isotherm(temperature)
-        volume = 1.0 / density
         x0 = x0 if x0 < high0 else high0
         x0 = x0 if x0 > low0 else low0
         xr = xr if xr < highr else highr
@@ -367,9 +374,10 @@ class LeeKesler(Fluid):
             fr, sloper, _, _ = terms(second, xr)
             slope0 = slope0 if slope0 > 1e-12 else 1e-12
             sloper = sloper if sloper > 1e-12 else 1e-12
-            k0 = (1.0 - h) / (x0 * x0 * slope0)
-            kr = h / (xr * xr * sloper)
-            f = ((1.0 - h) / x0 + h / xr - volume + k0 * f0 + kr * fr) / (k0 + kr)
+            v0, vr = density / x0, density / xr
+            k0 = (1.0 - h) * (v0 * v0) / slope0
+            kr = h * (vr * vr) / sloper
+            f = (((1.0 - h) * v0 + h * vr - 1.0) * density + k0 * f0 + kr * fr) / (k0 + kr)
             ratio0 = 1.0 - (f - f0) / (x0 * slope0)
             ratior = 1.0 - (f - fr) / (xr * sloper)
             done = abs(ratio0 - 1.0) <= _MATCH and abs(ratior - 1.0) <= _MATCH
@@ -381,12 +389,20 @@ class LeeKesler(Fluid):
             x0 = x0 if x0 > low0 else low0
             xr = xr if xr < highr else highr
             xr = xr if xr > lowr else lowr
-            if done and f > 0.0:
+            if done and f > 0.0 and k0 + kr > 0.0:
                 return x0, xr, f * temperature
-        return self._search(temperature, volume, branch)
+        return self._search(temperature, density)
 
-    def _search(self, temperature: float, volume: float, branch: Branch) -> tuple[float, float, float]:
+    def _search(self, temperature: float, density: float) -> tuple[float, float, float]:
         """Do the same by bracketing p_r, where Newton's method has failed (densities off the branches, mostly)."""
+        branch = Branch.GAS if density * self._softening <= 1.0 else Branch.LIQUID
+        found = self._search_branch(temperature, 1.0 / density, branch)
+        if math.isnan(found[0]) and temperature > _CRITICAL_REGION:
+            # next to the critical point, a branch may reach across the critical density
+            found = self._search_branch(temperature, 1.0 / density, Branch(1 - branch))
+        return found
+
+    def _search_branch(self, temperature: float, volume: float, branch: Branch) -> tuple[float, float, float]:
         h = self._h
         ends = []
         for fluid in (self._simple, self._reference):
@@ -409,16 +425,19 @@ class LeeKesler(Fluid):
             if found:
                 x0, xr = simple.density, reference.density
                 excess = (1.0 - h) / x0 + h / xr - volume
-                if abs(excess) <= _VOLUME * volume:
-                    return x0, xr, p
                 softness = ((1.0 - h) / (x0 * x0 * simple.slope) + h / (xr * xr * reference.slope)) * p / temperature
-                # the volume of a gas goes with 1/p: Newton's step in ln(p) for ln(V)
-                new = p * exp(excess / softness) if softness > 0.0 else 0.0
+                # where the blend softens with pressure, it has passed the end of its branch before the two fluids did
+                found = softness > 0.0
+                # where the branch ends, a step of p_r in its last digit moves the volume by more
+                exhausted = high - low <= _VOLUME * high
+                if found and abs(excess) <= _VOLUME * (volume + softness if exhausted else volume):
+                    return x0, xr, p
+                new = p * exp(excess / softness) if found else 0.0
             if (excess > 0.0) if found else (branch == Branch.LIQUID):
                 low = p
             else:
                 high = p
-            if high - low <= 1e-15 * high:
+            if high - low <= _RESOLUTION * high:
                 break
             p = new if low < new < high else math.sqrt(low * high)
         return _NAN, _NAN, _NAN
@@ -427,11 +446,11 @@ class LeeKesler(Fluid):
         h = self._h
         result = np.full((3, temperature.size), _NAN)
         rows = np.flatnonzero((temperature >= REDUCED_TEMPERATURE_MIN) & (density > 0.0))
-        t, volume = temperature[rows], 1.0 / density[rows]
-        share = density[rows] * self._softening
+        t, x = temperature[rows], density[rows]
+        share = x * self._softening
         gas = share <= 1.0
         share = np.minimum(share, 1.0)
-        x0, xr = density[rows] * (1.0 + share * self._simple_shift), density[rows] * (1.0 + share * self._reference_shift)
+        x0, xr = x * (1.0 + share * self._simple_shift), x * (1.0 + share * self._reference_shift)
         low0, high0 = _brackets(self._simple, t, gas)
         lowr, highr = _brackets(self._reference, t, gas)
         x0 = np.maximum(np.minimum(x0, high0), low0)
@@ -443,12 +462,14 @@ class LeeKesler(Fluid):
             f0, slope0, _, _ = terms(first, x0)
             fr, sloper, _, _ = terms(second, xr)
             slope0, sloper = np.maximum(slope0, 1e-12), np.maximum(sloper, 1e-12)
-            k0 = (1.0 - h) / (x0 * x0 * slope0)
-            kr = h / (xr * xr * sloper)
-            f = ((1.0 - h) / x0 + h / xr - volume + k0 * f0 + kr * fr) / (k0 + kr)
+            v0, vr = x / x0, x / xr
+            k0 = (1.0 - h) * (v0 * v0) / slope0
+            kr = h * (vr * vr) / sloper
+            f = (((1.0 - h) * v0 + h * vr - 1.0) * x + k0 * f0 + kr * fr) / (k0 + kr)
             ratio0 = 1.0 - (f - f0) / (x0 * slope0)
             ratior = 1.0 - (f - fr) / (xr * sloper)
             done = (np.abs(ratio0 - 1.0) <= _MATCH) & (np.abs(ratior - 1.0) <= _MATCH) & (f > 0.0)
+            done &= k0 + kr > 0.0
             x0 = x0 / np.minimum(np.maximum(ratio0, 0.5), 2.0)
             xr = xr / np.minimum(np.maximum(ratior, 0.5), 2.0)
             x0 = np.maximum(np.minimum(x0, high0), low0)
@@ -456,13 +477,11 @@ class LeeKesler(Fluid):
             if done.any():
                 result[:, rows[done]] = x0[done], xr[done], f[done] * t[done]
                 left = ~done
-                rows, t, volume, x0, xr = rows[left], t[left], volume[left], x0[left], xr[left]
+                rows, t, x, x0, xr = rows[left], t[left], x[left], x0[left], xr[left]
                 low0, high0, lowr, highr = low0[left], high0[left], lowr[left], highr[left]
                 first, second = select_rows(first, left), select_rows(second, left)
         for row in rows:
-            rho = float(density[row])
-            branch = Branch.GAS if rho * self._softening <= 1.0 else Branch.LIQUID
-            result[:, row] = self._search(float(temperature[row]), 1.0 / rho, branch)
+            result[:, row] = self._search(float(temperature[row]), float(density[row]))
         return result[0], result[1], result[2]
 
 
