@@ -27,43 +27,48 @@ _NEAR_DENSITY: Final = 0.4
 
 _SENTENCES: Final = (
     (
-        MixtureFlag.HYDRATE_POSSIBLE,
+        int(MixtureFlag.HYDRATE_POSSIBLE),
         "hydrate_possible",
         "Free water is near and the gas forms hydrates at low temperature: they may plug the line above the ice point.",
     ),
-    (MixtureFlag.ICE_POSSIBLE, "ice_possible", "Below its freezing point the water of this gas comes out as ice or frost."),
     (
-        MixtureFlag.NEAR_CRITICAL,
+        int(MixtureFlag.ICE_POSSIBLE),
+        "ice_possible",
+        "Below its freezing point the water of this gas comes out as ice or frost.",
+    ),
+    (
+        int(MixtureFlag.NEAR_CRITICAL),
         "near_critical",
         "The state is near the critical point of the mixture: small errors of input are large ones of density.",
     ),
     (
-        MixtureFlag.DEW_BELOW_RANGE,
+        int(MixtureFlag.DEW_BELOW_RANGE),
         "dew_point_below_range",
         "The dew point at this pressure, if there is one, lies below the lowest temperature of the equation.",
     ),
     (
-        MixtureFlag.ABOVE_CRICONDENBAR,
+        int(MixtureFlag.ABOVE_CRICONDENBAR),
         "above_cricondenbar",
         "The pressure is above the highest one at which the mixture can condense on cooling.",
     ),
     (
-        MixtureFlag.DIRECT,
+        int(MixtureFlag.DIRECT),
         "margin_not_known",
         "The phase was decided by a stability test of this state alone; no dew point is given.",
     ),
     (
-        MixtureFlag.EXTRAPOLATED,
+        int(MixtureFlag.EXTRAPOLATED),
         "dew_point_extrapolated",
         "The dew point lies below the lowest pressure that was traced and is extrapolated.",
     ),
     (
-        MixtureFlag.WATER_AND_LIQUID,
+        int(MixtureFlag.WATER_AND_LIQUID),
         "three_phases_possible",
         "Both liquid water and a liquid of the gas can form: three phases are possible.",
     ),
 )
 
+_WATER: Final = int(DewKind.WATER)
 _DEW_NAMES: Final = {int(DewKind.HYDROCARBON): "of the gas itself", int(DewKind.WATER): "of water"}
 
 
@@ -138,7 +143,8 @@ class MixtureJudge:
     ) -> Margins:
         """Return the margins and warnings of one state."""
         verdict = surveyed if isinstance(surveyed, MixtureVerdict) else self.phase.at(temperature, pressure)
-        warnings = [PhaseWarning(code, text) for flag, code, text in _SENTENCES if verdict.flags & flag]
+        flags = verdict.flags
+        warnings = [PhaseWarning(code, text) for flag, code, text in _SENTENCES if flags & flag] if flags else []
         dew = verdict.dew_point_temperature
         if dew is not None:
             kind = _DEW_NAMES.get(verdict.dew_kind, "")
@@ -148,7 +154,7 @@ class MixtureJudge:
             text = f"The dew point {kind} at this pressure lies at {dew:.5g} K{within}."
             if near:
                 warnings.insert(0, PhaseWarning("near_dew_point", text))
-            elif verdict.dew_kind == DewKind.WATER:
+            elif verdict.dew_kind == _WATER:
                 warnings.insert(0, PhaseWarning("water_dew_point", text))
             else:
                 warnings.insert(0, PhaseWarning("gas_dew_point", text))
