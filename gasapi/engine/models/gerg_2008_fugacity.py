@@ -14,6 +14,7 @@ The Hessian follows by the same rules. Evaluated for many rows at once with ordi
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Final
 
 import numpy as np
@@ -64,6 +65,7 @@ class GergEnergy(MixtureEnergy):
     """
 
     def __init__(self, system: GergSystem) -> None:
+        self._system = system
         self.components = system.components
         self.gas_constant = system.data.gas_constant
         self.molar_masses = np.array(system.molar_masses)
@@ -152,6 +154,10 @@ class GergEnergy(MixtureEnergy):
         self._weight, self._skew, self._lean = weight, skew, 1.0 - skew
         self._pure = np.stack([system.critical_volumes, system.critical_temperatures])
         self._double_pure = 2.0 * self._pure
+
+    def subset(self, chosen: Sequence[int]) -> GergEnergy:
+        """Return the same equation for some of the components."""
+        return GergEnergy(GergSystem(self._system.data, [self.components[i] for i in chosen]))
 
     def close_packing(self, fractions: Floats) -> Floats:
         """Return the density from which the liquid root is sought; see ``MixtureEnergy``."""

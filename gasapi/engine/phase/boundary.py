@@ -16,7 +16,7 @@ from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.incipient import IncipientPhase, Points
 from gasapi.engine.protocol import Branch, Status
 
-__all__ = ["Boundary", "NamedPoint", "trace_boundary", "wilson_start"]
+__all__ = ["Boundary", "NamedPoint", "position_of", "trace_boundary", "wilson_start"]
 
 _LOWEST_PRESSURE: Final = 1e3
 _HIGHEST_PRESSURE: Final = 2e8
@@ -118,10 +118,8 @@ def _start_point(system: IncipientPhase, log_pressure: float | None, temperature
     k = system.active.size
     start[0, :k] = np.log(np.maximum(x, 1e-250) * dense / system.fractions[system.active]) - log_rho
     start[0, k], start[0, k + 1] = log_rho, math.log(t)
-    if temperature is None:
-        points = system.solve(start, -1, np.array([log_p]))
-    else:
-        points = system.solve(start, k + 1, start[:, k + 1])
+    spec = -1 if temperature is None else k + 1
+    points = system.solve(start, spec, np.array([log_p]) if temperature is None else start[:, k + 1])
     kappa = points.unknown[0, :k]
     return points if points.converged[0] and float(np.abs(kappa).max()) > 1.0 else None
 
@@ -174,6 +172,12 @@ class _Trace:
             np.stack(self.unknown[-2:]),
             np.stack(self.slope[-2:]),
         )[0]
+
+
+def position_of(b: Boundary, point: NamedPoint) -> float:
+    """Return the position of a named point."""
+    s = math.log(point.density)
+    return s + _WEIGHT * math.exp(s) / b.scale
 
 
 def feed_log_density(position: Floats, scale: float) -> Floats:
@@ -271,9 +275,7 @@ def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperat
     return trace, False, "too many points"
 
 
-def trace_boundary(
-    energy: MixtureEnergy, fractions: Floats, lowest_temperature: float
-) -> tuple[Boundary | None, str]:
+def trace_boundary(energy: MixtureEnergy, fractions: Floats, lowest_temperature: float) -> tuple[Boundary | None, str]:
     """Trace the boundary of a mixture.
 
     :param energy: the equation of state

@@ -29,7 +29,8 @@ class CubicEnergy(MixtureEnergy):
     """
 
     def __init__(self, mixture: CubicMixture, chosen: Sequence[int] | None = None) -> None:
-        kept = list(range(len(mixture.substances))) if chosen is None else list(chosen)
+        self._mixture = mixture
+        self._kept = kept = list(range(len(mixture.substances))) if chosen is None else list(chosen)
         substances = [mixture.substances[i] for i in kept]
         parameters = [mixture.form.component(s) for s in substances]
         self.components = tuple(s.id for s in substances)
@@ -43,6 +44,10 @@ class CubicEnergy(MixtureEnergy):
         self._slopes = np.array([c.slope for c in parameters])
         self._covolumes = np.array([c.covolume for c in parameters])
         self._pair_factors = (1.0 - mixture.interaction_parameters)[np.ix_(kept, kept)]
+
+    def subset(self, chosen: Sequence[int]) -> CubicEnergy:
+        """Return the same equation for some of the components."""
+        return CubicEnergy(self._mixture, [self._kept[i] for i in chosen])
 
     def close_packing(self, fractions: Floats) -> Floats:
         """Return the density from which the liquid root is sought; see ``MixtureEnergy``."""

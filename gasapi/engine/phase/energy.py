@@ -1,8 +1,8 @@
 """What the phase machinery asks of an equation of state for mixtures: derivatives in the molar densities of the components.
 
 In the variables (T, rho_1 ... rho_n) a phase equilibrium needs no density solve of its own: with psi the residual Helmholtz
-energy of a volume over R T and g_i = d psi/d rho_i, the fugacity is f_i = rho_i R T exp(g_i), and p = R T (rho + sum rho_i g_i -
-psi). Newton's method then works on densities and temperature together (Deiters and Bell, Ind. Eng. Chem. Res. 58 (2019) 2983).
+energy of a volume over R T and g_i = d psi/d rho_i, the fugacity is f_i = rho_i R T exp(g_i), and
+p = R T (rho + sum rho_i g_i - psi). Newton's method then works on densities and temperature together (Deiters and Bell, Ind. Eng. Chem. Res. 58 (2019) 2983).
 
 These are ordinary NumPy sums, whose last bits may depend on the number of rows. They may therefore feed an answer only where
 the rows are fixed by the composition (or by the composition and one state), never by how many states were asked together.
@@ -11,6 +11,7 @@ the rows are fixed by the composition (or by the composition and one state), nev
 from __future__ import annotations
 
 from abc import ABC, abstractmethod
+from collections.abc import Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -24,31 +25,8 @@ Floats = NDArray[np.float64]
 """An array of any shape."""
 
 # an isotherm is walked on these fractions of close packing before any root on it is believed
-_WALK = np.array(
-    [
-        1e-7,
-        1e-4,
-        1e-3,
-        3e-3,
-        1e-2,
-        0.02,
-        0.035,
-        0.055,
-        0.08,
-        0.11,
-        0.14,
-        0.17,
-        0.2,
-        0.23,
-        0.26,
-        0.3,
-        0.34,
-        0.38,
-        0.42,
-        0.46,
-        0.5,
-    ]
-    + [0.54, 0.58, 0.62, 0.66, 0.7, 0.74, 0.78, 0.82, 0.86, 0.9, 0.94, 0.97, 1.0]
+_WALK = np.concatenate(
+    [(1e-7, 1e-4, 1e-3, 3e-3, 0.01, 0.02, 0.035, 0.055, 0.08, 0.11, 0.14, 0.17, 0.2, 0.23, 0.26), np.linspace(0.3, 1.0, 18)]
 )
 _STEPS = 60
 _DONE = 1e-13
@@ -58,7 +36,7 @@ class EnergyDerivatives(NamedTuple):
     """Derivatives at m states of n components, all made dimensionless.
 
     ``compressibility`` Z, shape (m,); ``potential`` g_i = ln(phi_i Z), (m, n); ``hessian`` rho d g_i/d rho_j at fixed T,
-    (m, n, n); ``potential_slope`` T d g_i/dT at fixed densities, (m, n); ``compressibility_slope`` T dZ/dT at fixed densities, (m,).
+    (m, n, n); ``potential_slope`` T d g_i/dT and ``compressibility_slope`` T dZ/dT at fixed densities, (m, n) and (m,).
     """
 
     compressibility: Floats
@@ -115,6 +93,10 @@ class MixtureEnergy(ABC):
     @abstractmethod
     def lowest_temperature(self, fractions: Floats) -> Floats:
         """Return the temperature below which sums of terms are rounding noise in the liquid, K, shape (m,)."""
+
+    @abstractmethod
+    def subset(self, chosen: Sequence[int]) -> MixtureEnergy:
+        """Return the same equation for some of the components."""
 
     def density(
         self, temperature: Floats, pressure: Floats, fractions: Floats, branch: Branch

@@ -10,7 +10,8 @@ component that is not active is held out of the incipient phase.
 from __future__ import annotations
 
 import math
-from typing import NamedTuple
+from contextlib import suppress
+from typing import NamedTuple, cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -32,8 +33,8 @@ _ROUGH = 3e-4
 
 
 class Points(NamedTuple):
-    """Solved points: ``unknown`` (m, k + 2), ``log_pressure`` (m,), ``slope`` of the unknowns in s along the boundary (m, k + 2),
-    ``pressure_slope`` d ln p/d s (m,), ``steps`` that were taken, ``converged`` (m,).
+    """Solved points: ``unknown`` (m, k + 2), ``log_pressure`` (m,), ``slope`` of the unknowns in s along the boundary,
+    (m, k + 2), ``pressure_slope`` d ln p/d s (m,), ``steps`` that were taken, ``converged`` (m,).
     """
 
     unknown: Floats
@@ -129,10 +130,10 @@ class IncipientPhase:
         last = self.size - 1
         converged = np.zeros(m, dtype=bool)
         lost = np.zeros(m, dtype=bool)
-        steps = 0
+        count = 0
         rows = np.arange(m)
         with np.errstate(all="ignore"):
-            for steps in range(1, _STEPS + 1):
+            for count in range(1, _STEPS + 1):  # noqa: B007
                 here = x[rows]
                 e = self._equations(here)
                 self._close(e, here, spec, value[rows])
@@ -154,7 +155,7 @@ class IncipientPhase:
             unit[:, last] = 1.0
             slope = _solved(e.jacobian, unit)[:, :, 0]
         pressure_slope = (e.log_pressure_gradient * slope).sum(axis=1)
-        return Points(x, e.log_pressure, slope, pressure_slope, steps, converged)
+        return Points(x, e.log_pressure, slope, pressure_slope, count, converged)
 
     def step_along(self, start: Floats, log_density: float) -> Points:
         """Solve one point at a given density of the feed, well enough to step on from it: to about 1e-7.
@@ -167,9 +168,9 @@ class IncipientPhase:
         last = self.size - 1
         right = np.zeros((1, self.size, 2))
         value = np.array([log_density])
-        steps, converged = 0, False
+        count, converged = 0, False
         with np.errstate(all="ignore"):
-            for steps in range(1, _STEPS + 1):
+            for count in range(1, _STEPS + 1):  # noqa: B007
                 e = self._equations(x)
                 self._close(e, x, spec, value)
                 right[:, :, 0] = e.residual
@@ -188,7 +189,7 @@ class IncipientPhase:
         slope = both[:, :, 1]
         log_pressure = e.log_pressure - (e.log_pressure_gradient * step).sum(axis=1)
         pressure_slope = (e.log_pressure_gradient * slope).sum(axis=1)
-        return Points(x, log_pressure, slope, pressure_slope, steps, np.array([converged]))
+        return Points(x, log_pressure, slope, pressure_slope, count, np.array([converged]))
 
     def _close(self, e: _Equations, x: Floats, spec: int, value: Floats) -> None:
         """Put the equation of what is given into the last row."""
@@ -203,16 +204,11 @@ class IncipientPhase:
 
 def _solved(matrix: Floats, right: Floats) -> Floats:
     """Solve rows of linear systems; a singular or infinite one gives NaN for its row only."""
-    bad = ~np.isfinite(matrix).all(axis=(1, 2))
-    if bad.any():
-        matrix = np.where(bad[:, None, None], np.nan, matrix)
     try:
-        return np.linalg.solve(matrix, right)
+        return cast(Floats, np.linalg.solve(matrix, right))
     except np.linalg.LinAlgError:
-        rows = []
-        for one, other in zip(matrix, right, strict=True):
-            try:
-                rows.append(np.linalg.solve(one, other))
-            except np.linalg.LinAlgError:
-                rows.append(np.full(other.shape, np.nan))
-        return np.array(rows)
+        result = np.full(right.shape, np.nan)
+        for row in range(matrix.shape[0]):
+            with suppress(np.linalg.LinAlgError):
+                result[row] = np.linalg.solve(matrix[row], right[row])
+        return result

@@ -24,18 +24,19 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from enum import IntEnum, IntFlag
-from typing import Final, NamedTuple, cast
+from typing import Final, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import CubicSpline, PchipInterpolator
+from scipy.interpolate import CubicSpline
 
-from gasapi.engine.elementary import Array, exp, log
+from gasapi.engine.elementary import Array, log
 from gasapi.engine.models.cubic import CubicMixture
 from gasapi.engine.models.gerg_2008 import GergSystem
 from gasapi.engine.models.gerg_2008_fugacity import GergEnergy
-from gasapi.engine.phase.boundary import Boundary, NamedPoint, trace_boundary
+from gasapi.engine.phase.boundary import NamedPoint, trace_boundary
 from gasapi.engine.phase.cubic_energy import CubicEnergy
+from gasapi.engine.phase.curves import DIRECT, BoundaryCurve, OddBoundary, WaterCurve
 from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.flash import FlashResult, two_phase_flash
 from gasapi.engine.phase.region import Region
@@ -60,7 +61,6 @@ _SUPERCRITICAL: Final = int(Region.SUPERCRITICAL)
 _LIQUID: Final = int(Region.LIQUID)
 _TWO_PHASE: Final = int(Region.TWO_PHASE)
 _UNKNOWN: Final = int(Region.UNKNOWN)
-_DIRECT: Final = -1
 
 LOWEST_TEMPERATURE: Final = 60.0
 """K: the lower end of the extended range of GERG-2008; taken for the cubic equations as well."""
@@ -68,13 +68,22 @@ LOWEST_TEMPERATURE: Final = 60.0
 _LOG_LOWEST: Final = math.log(1e3)
 _LOG_HIGHEST: Final = math.log(1.5e8)
 _WATER_NODES: Final = 48
-_KNOTS: Final = 160
-_BLOCK_ROWS: Final = 8192
+_FEWEST: Final = 6
+_BLOCK_ROWS: Final = 4096
 _JUMP: Final = 6.0
 _DRY_FLOOR: Final = 15.0
 
-# what makes a clathrate former, and below which temperature and above which pressure a warning is due: the hydrate lines of
-# hydrogen sulfide and methane end near 302 K in practice. Common practice, no source.
+# a mixture whose boundary is not known is a single phase well above all its critical temperatures, gas-gas equilibria of
+# helium and hydrogen at hundreds of megapascal apart. Common practice, no source.
+_HOT: Final = 1.3
+_HOT_PRESSURE: Final = 1e8
+
+# scarce and heavy components that may fall out before the bulk of the gas condenses
+_SCARCE: Final = 0.02
+_HEAVIER: Final = 1.5
+
+# clathrate formers, and below which temperature and above which pressure a warning is due: the hydrate lines of hydrogen
+# sulfide and methane end near 302 K in practice. Common practice, no source.
 _HYDRATE_FORMERS: Final = frozenset(
     {"methane", "ethane", "propane", "isobutane", "n-butane", "carbon-dioxide", "hydrogen-sulfide", "nitrogen", "oxygen"}
     | {"argon", "krypton", "xenon", "ethylene", "cyclopropane", "sulfur-dioxide"}
@@ -83,11 +92,47 @@ _HYDRATE_TEMPERATURE: Final = 303.0
 _HYDRATE_PRESSURE: Final = 1e5
 _HYDRATE_NEAR: Final = 8.0
 _TRIPLE: Final = 273.16
+_NEAR_TEMPERATURE: Final = 0.02
+_NEAR_PRESSURE: Final = 0.1
+
 _LIGHT: Final = 460.0
 """K: critical temperatures of the butanes lie below, those of the pentanes at it or above."""
 
-_NEAR_TEMPERATURE: Final = 0.02
-_NEAR_PRESSURE: Final = 0.1
+_LOG_HOT: Final = math.log(_HOT_PRESSURE)
+_WATER_CRITICAL: Final = 660.0
+
+# what a state is by several curves: the worst that one of them says
+_RANKED: Final = np.array([_GAS, _LIQUID, DIRECT, _TWO_PHASE], dtype=np.int8)
+_RANK: Final = np.zeros(256, dtype=np.int8)
+_RANK[_LIQUID], _RANK[DIRECT], _RANK[_TWO_PHASE] = 1, 2, 3
+
+
+def _worse(one: int, other: int) -> int:
+    return int(_RANKED[max(_RANK[one], _RANK[other])])
+
+
+def _margin_temperature(t: float, region: int, dew: float, low: float) -> float:
+    """Return the margin to the dew point, or to the nearer end of the two-phase range; NaN for none."""
+    if region == _UNKNOWN:
+        return math.nan
+    margin = t - dew
+    rise = t - low
+    if region == _LIQUID and rise == rise:
+        return rise
+    if region == _TWO_PHASE and rise < -margin:
+        # never above zero, though the curves meet only to their own accuracy
+        return -rise if rise > 0.0 else 0.0
+    return margin
+
+
+def _share(energy: MixtureEnergy, z: Floats, kept: Sequence[int]) -> tuple[MixtureEnergy, Floats, float]:
+    """Return part of a mixture by itself: equation, fractions, and by how much the ln p of the whole exceeds its own.
+
+    Exact for an ideal gas, and what is left out is scarce wherever it does not condense first.
+    """
+    left = z[list(kept)]
+    share = math.fsum(left.tolist())
+    return energy.subset(kept), left / share, -math.log(share)
 
 
 class DewKind(IntEnum):
@@ -168,112 +213,16 @@ class MixtureOutline(NamedTuple):
     end: str
 
 
-class _Branches:
-    """The boundary of the dry mixture as smooth functions; ``shift`` is added to its ln p. Immutable."""
-
-    def __init__(self, b: Boundary, shift: float) -> None:
-        lp, t = b.log_pressure + shift, np.exp(b.log_temperature)
-        top = int(lp.argmax()) if b.cricondenbar is None else int(np.searchsorted(b.position, _position(b, b.cricondenbar)))
-        first_turn = b.cricondenbar is not None
-        # rising pressure up to the top, falling beyond it for as long as it does
-        rise = _run(lp[: top + 1][::-1], falling=True)
-        if rise != top + 1:
-            raise _Odd
-        self.closed = first_turn
-        fall = _run(lp[top:], falling=True) if first_turn else 1
-        used = lp[: top + fall]
-        self.log_top = round(float(lp[top]), 10)
-        w = np.sqrt(np.maximum(self.log_top - used, 0.0))
-        w[top + 1 :] *= -1.0
-        w[top] = 0.0
-        self.by_pressure = _table(-w, t[: top + fall], 1e-7)
-        self.log_first = round(float(lp[0]), 10)
-        self.log_last = round(float(used[-1]), 10) if fall > 1 else math.inf
-        self.last_temperature = float(t[top + fall - 1])
-
-        hot = int(t.argmax()) if b.cricondentherm is None else int(np.searchsorted(b.position, _position(b, b.cricondentherm)))
-        if _run(t[: hot + 1][::-1], falling=True) != hot + 1:
-            raise _Odd
-        self.turns = b.cricondentherm is not None
-        fall = _run(t[hot:], falling=True) if self.turns else 1
-        self.hottest = round(float(t[hot]), 7)
-        u = np.sqrt(np.maximum(self.hottest - t[: hot + fall], 0.0))
-        u[: hot + 1] *= -1.0
-        u[hot] = 0.0
-        self.by_temperature = _table(u, lp[: hot + fall], 1e-10)
-        self.coldest_first = float(t[0])
-        self.coldest_top = float(t[hot + fall - 1]) if fall > 1 else math.inf
-        # the line goes on straight in ln p against 1/T below its first point
-        self.inverse_first = 1.0 / self.coldest_first
-        self.inverse_slope = -float(b.temperature_slope[0] / b.pressure_slope[0]) / self.coldest_first
-        if not self.inverse_slope < 0.0:
-            raise _Odd
-
-
-class _Odd(Exception):
-    """A boundary that is not of the usual shape: every state is put to the direct test."""
-
-
-def _position(b: Boundary, point: NamedPoint) -> float:
-    s = math.log(point.density)
-    # the named points are nodes of the grid; a hair below them finds the node itself
-    return s + 3.0 * math.exp(s) / b.scale - 1e-9
-
-
-def _run(values: Floats, falling: bool) -> int:
-    """Return how many values from the first on fall strictly."""
-    steps = np.diff(values) < 0.0 if falling else np.diff(values) > 0.0
-    return values.size if bool(steps.all()) else int(steps.argmin()) + 1
-
-
-def _table(x: Floats, y: Floats, grain: float) -> CubicTable:
-    """Return the table of a curve whose abscissa rises."""
-    spline = CubicSpline(x, y)
-    knots = np.linspace(x[0], x[-1], _KNOTS + 1)
-    values = np.round(spline(knots) / grain) * grain
-    slopes = np.round(spline(knots, 1) / grain) * grain
-    return CubicTable(float(x[0]), float(x[-1]), values, slopes)
-
-
-class _Monotone(NamedTuple):
-    """A rising or falling stretch of the water line: ln p as a function of T between two temperatures."""
-
-    low: float
-    high: float
-    log_pressure: CubicTable
-
-
-class _WaterBranch:
-    """The water dew line over a range of pressure. Immutable."""
-
-    def __init__(self, log_pressure: Floats, temperature: Floats) -> None:
-        self.low, self.high = float(log_pressure[0]), float(log_pressure[-1])
-        self.by_pressure = _table(log_pressure, temperature, 1e-7)
-        fine = np.linspace(self.low, self.high, 8 * (log_pressure.size - 1) + 1)
-        t = cast(Floats, self.by_pressure(fine))
-        turns = [0, *(np.flatnonzero(np.diff(t)[1:] * np.diff(t)[:-1] < 0.0) + 1).tolist(), t.size - 1]
-        stretches = []
-        for a, z in zip(turns[:-1], turns[1:], strict=True):
-            if z - a < 3 or t[a] == t[z]:
-                continue
-            order = slice(a, z + 1)
-            ts, lps = (t[order], fine[order]) if t[z] > t[a] else (t[order][::-1], fine[order][::-1])
-            inverse = PchipInterpolator(ts, lps)
-            knots = np.linspace(ts[0], ts[-1], 97)
-            table = CubicTable(
-                float(ts[0]), float(ts[-1]), np.round(inverse(knots), 10), np.round(inverse(knots, 1), 10)
-            )
-            stretches.append(_Monotone(float(ts[0]), float(ts[-1]), table))
-        self.stretches = tuple(stretches)
-
-
 class MixturePhase:
     """The phase of one composition by one equation. Immutable, and safe to share between threads.
+
+    ``boundary`` is the traced boundary of the dry mixture or None, ``end`` why the trace ended, ``critical`` the critical point
+    on it or None.
 
     :param energy: the equation of state for phase equilibria
     :param fluid: the same equation at this composition
     :param fractions: mole fractions in the order of the energy's components, all above 0, [-]
-    :param dry: the equation of state without water, where liquid water does not mix with the rest; else None
+    :param dry: the numbers of the components without water, where liquid water does not mix with the rest; else None
     :param checked: whether the boundary is to be compared with direct tests, for components that associate
     :param cold_water: whether the equation has no trustworthy liquid water below 240 K
     :param uncertainty: of the dew temperature of the dry mixture, and of water
@@ -284,192 +233,185 @@ class MixturePhase:
         energy: MixtureEnergy,
         fluid: Fluid,
         fractions: Sequence[float],
-        dry: MixtureEnergy | None = None,
+        dry: Sequence[int] | None = None,
         checked: bool = False,
         cold_water: bool = False,
-        uncertainty: tuple[DewUncertainty, DewUncertainty] = (DewUncertainty(5.0, "estimate"), DewUncertainty(3.0, "estimate")),
+        uncertainty: tuple[DewUncertainty, DewUncertainty] = (DewUncertainty(5.0, "estimate"), DewUncertainty(5.0, "estimate")),
     ) -> None:
         z = np.array(fractions, dtype=np.float64)
-        self.energy, self.fluid, self.fractions = energy, fluid, tuple(float(x) for x in fractions)
+        names = energy.components
+        self.energy, self.fluid, self.fractions = energy, fluid, tuple(z.tolist())
         self.model = fluid.model
         self.hydrocarbon_uncertainty, self.water_uncertainty = uncertainty
-        names = energy.components
         self._wet = dry is not None
-        self._hydrates = WATER in names and not _HYDRATE_FORMERS.isdisjoint(names)
         self._icy = WATER in names
-        self._test = StabilityTest(energy, z, self._wet)
-        rest, shift, traced = energy, 0.0, z
+        self._hydrates = self._icy and not _HYDRATE_FORMERS.isdisjoint(names)
+        liquid = LiquidWater(energy, cold_water) if self._wet else None
+        self._test = StabilityTest(energy, z, liquid)
+        rest, traced, shift = energy, z, 0.0
         if dry is not None:
-            # the dry gas at its share of the pressure: exact for an ideal gas, and water is scarce where it does not condense first
-            left = z[[i for i, c in enumerate(names) if c != WATER]]
-            share = math.fsum(left.tolist())
-            rest, shift, traced = dry, -math.log(share), left / share
+            rest, traced, shift = _share(energy, z, dry)
         self._shift = shift
+        self._hot = _HOT * float(rest.critical_temperatures.max())
         with np.errstate(all="ignore"):
-            boundary, self.end = trace_boundary(rest, traced, LOWEST_TEMPERATURE)
-        self.boundary = boundary
-        self._lines: _Branches | None = None
-        self._never = False
-        self._below_range = False
-        self._odd = False
-        if boundary is not None:
-            try:
-                self._lines = _Branches(boundary, shift)
-                self._below_range = self._lines.coldest_first < 1.06 * LOWEST_TEMPERATURE
-            except (_Odd, ValueError):
-                self._odd = True
-        else:
-            self._never = self._never_condenses(rest, traced)
-            self._below_range = self._never
-            self._odd = not self._never
-        if checked and self._lines is not None and not self._agrees():
-            self._odd = True
+            self.boundary, self.end = trace_boundary(rest, traced, LOWEST_TEMPERATURE)
+            self._curves, known = self._make_curves(rest, traced, checked)
+        self._never = not known and self._never_condenses(rest, traced)
+        self._odd = not known and not self._never
+        self._closed = bool(self._curves) and all(c.closed for c in self._curves)
+        self._log_top = max((c.log_top for c in self._curves), default=-math.inf)
         self._set_critical(rest, traced)
-        self._water_gas: _WaterBranch | None = None
-        self._water_dense: _WaterBranch | None = None
+        self._water_gas: WaterCurve | None = None
+        self._water_dense: WaterCurve | None = None
         self._water_unsure = False
-        if self._wet:
+        if liquid is not None:
             with np.errstate(all="ignore"):
-                self._solve_water(z, cold_water)
+                self._solve_water(z, liquid)
 
     # construction
 
+    def _make_curves(self, rest: MixtureEnergy, z: Floats, checked: bool) -> tuple[tuple[BoundaryCurve, ...], bool]:
+        """Return the curves of the dry mixture, and whether they tell the phase."""
+        b = self.boundary
+        if b is None:
+            return (), False
+        try:
+            curve = BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, False)
+            # a line that has no critical point may not be the only one
+            doubtful = (
+                checked or (curve.closed and b.critical is None) or (not curve.closed and b.end.startswith("the boundary"))
+            )
+            test = StabilityTest(rest, z, None)
+            if not doubtful or self._agrees((curve,), test):
+                return (curve,), True
+            curves = (BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, True), *self._lean_curve(rest, z))
+            return (curves, True) if len(curves) > 1 and self._agrees(curves, test) else ((), False)
+        except OddBoundary:
+            return (), False
+
+    def _lean_curve(self, rest: MixtureEnergy, z: Floats) -> tuple[BoundaryCurve, ...]:
+        """Return the curve of the bulk of the gas, without scarce heavy components that fall out by themselves."""
+        mean = float((z * rest.critical_temperatures).sum())
+        kept = [i for i in range(z.size) if z[i] > _SCARCE or rest.critical_temperatures[i] < _HEAVIER * mean]
+        if len(kept) == z.size or not kept:
+            return ()
+        lean, fractions, shift = _share(rest, z, kept)
+        boundary, _ = trace_boundary(lean, fractions, LOWEST_TEMPERATURE)
+        return () if boundary is None else (BoundaryCurve(boundary, self._shift + shift, LOWEST_TEMPERATURE, False),)
+
+    def _agrees(self, curves: tuple[BoundaryCurve, ...], test: StabilityTest) -> bool:
+        """Return whether states of the dry mixture just outside all curves are stable by the direct test."""
+        last = curves[-1]
+        states = []
+        if all(c.closed for c in curves):
+            # beyond the top first, since a line that is not the only one shows it there
+            beyond = max(c.log_top for c in curves) + 0.03
+            t = last.by_pressure(0.0)
+            states = [(t, beyond), (0.5 * (t + last.hottest), beyond), (0.97 * t, beyond)]
+        for part in (0.97, 0.75):
+            lp = last.log_first + part * (last.log_top - last.log_first)
+            t = max(float(c.dew_temperature(np.array([lp]))[0]) for c in curves)
+            states.append((t + 1.0, lp))
+        states = states[: len(states) - 1] if len(curves) > 1 else states
+        return all(test.at(t, math.exp(lp - self._shift)).verdict == Stability.STABLE for t, lp in states)
+
     def _never_condenses(self, rest: MixtureEnergy, z: Floats) -> bool:
         """Return whether the dry gas is stable at the lowest temperature of the equation at every pressure tried."""
+        if self.boundary is not None:
+            return False
         if float(rest.critical_temperatures.max()) < LOWEST_TEMPERATURE:
             return True
-        test = StabilityTest(rest, z, False)
+        test = StabilityTest(rest, z, None)
         pressures = (1e4, 1e5, 5e5, 2e6, 5e6, 1e7, 3e7, 7e7)
         return all(test.at(LOWEST_TEMPERATURE, p).verdict == Stability.STABLE for p in pressures)
 
-    def _agrees(self) -> bool:
-        """Return whether states just outside the boundary are stable by the direct test."""
-        assert self._lines is not None
-        span = self._lines.log_top - self._lines.log_first
-        for part in (0.3, 0.6, 0.85, 0.97):
-            lp = self._lines.log_first + part * span
-            t = self._lines.by_pressure(-math.sqrt(self._lines.log_top - lp))
-            if self._test.at(t + 2.0, math.exp(lp)).verdict != Stability.STABLE:
-                return False
-        return True
-
     def _set_critical(self, rest: MixtureEnergy, z: Floats) -> None:
         """Choose the critical point, and tabulate Z along its isochore."""
-        point = None if self.boundary is None else self.boundary.critical
-        self.critical = point
+        point = None if self.boundary is None or self._odd else self.boundary.critical
+        self.critical = self._shifted(point)
         if point is not None:
             t, rho = point.temperature, point.density
         else:
             # no critical point on the traced part: pseudo-critical values for telling gas from dense fluid
-            packed = float(rest.close_packing(z[None])[0])
             t = float((z * rest.critical_temperatures).sum())
-            rho = packed / 3.6
-            if self.boundary is not None and self.boundary.cricondentherm is not None:
-                t = max(t, self.boundary.cricondentherm.temperature)
+            rho = float(rest.close_packing(z[None])[0]) / 3.6
+            t = max([t, *(c.hottest for c in self._curves)])
         self._critical_temperature, self._critical_density = t, rho
         inverse = np.linspace(0.1, 1.0, 65)
         temperature = t / inverse
         p = self.fluid.pressure(temperature, np.full(65, rho)).pressure
         factor = p / (rho * self.energy.gas_constant * temperature)
         spline = CubicSpline(inverse, factor)
-        self._isochore = CubicTable(0.1, 1.0, np.round(spline(inverse), 11), np.round(spline(inverse, 1), 11))
+        self._isochore = CubicTable(0.1, 1.0, np.round(factor, 11), np.round(spline(inverse, 1), 11))
         self._isochore_scale = rho * self.energy.gas_constant
-        self.critical_pressure = float(p[-1]) if point is None else point.pressure
+        self._critical_pressure = float(p[-1]) if self.critical is None else self.critical.pressure
 
-    def _solve_water(self, z: Floats, cold: bool) -> None:
+    def _shifted(self, point: NamedPoint | None) -> NamedPoint | None:
+        """Return a point of the dry mixture at the pressure of the whole."""
+        if point is None or self._shift == 0.0:
+            return point
+        share = math.exp(self._shift)
+        return NamedPoint(point.temperature, point.pressure * share, point.density * share)
+
+    def _solve_water(self, z: Floats, liquid: LiquidWater) -> None:
         log_p = np.linspace(_LOG_LOWEST, _LOG_HIGHEST, _WATER_NODES)
-        liquid = LiquidWater(self.energy, cold)
         line = water_line(self.energy, self.fluid, z, log_p, Branch.GAS, liquid)
-        good = line.found.copy()
-        if self._lines is not None:
-            # where the gas condenses first, its metastable water line is of no use
-            good &= ~(line.temperature < self._hydrocarbon_dew(log_p) - _DRY_FLOOR)
+        dew = np.full(log_p.size, -np.inf)
+        for curve in self._curves:
+            dew = np.maximum(dew, curve.dew_temperature(log_p))
+        # where the gas condenses first, its metastable water line is of no use
+        good = line.found & ~(line.temperature < dew - _DRY_FLOOR)
         count = _leading(good, line.temperature)
-        if count >= 6:
-            self._water_gas = _WaterBranch(log_p[:count], line.temperature[:count])
-        else:
+        if count < _FEWEST:
             self._water_unsure = True
-        if count < _WATER_NODES and self._lines is not None and self._lines.closed:
+        else:
+            self._water_gas = WaterCurve(log_p[:count], line.temperature[:count])
+            # where the line leaves the gas, the gas has to condense before water does, up to the cricondenbar
+            self._water_unsure = count < _WATER_NODES and not line.temperature[count - 1] < dew[count - 1] + 2.0
+        if count < _WATER_NODES and self._closed:
             line = water_line(self.energy, self.fluid, z, log_p, Branch.LIQUID, liquid)
             back = _leading(line.found[::-1], line.temperature[::-1])
-            if back >= 6:
-                self._water_dense = _WaterBranch(log_p[-back:], line.temperature[-back:])
-        self._water_top = math.inf
-        if self._lines is not None and self._water_gas is not None and count < _WATER_NODES:
-            # from where the line left the gas on, the gas condenses before water does, up to the cricondenbar
-            last = self._water_gas.by_pressure(self._water_gas.high)
-            cut = float(self._hydrocarbon_dew(np.array([self._water_gas.high]))[0])
-            if not last < cut + 2.0:
-                self._water_unsure = True
-
-    def _hydrocarbon_dew(self, log_p: Floats) -> Floats:
-        """Return the dew temperature of the dry gas, K, -inf where there is none."""
-        lines = self._lines
-        assert lines is not None
-        w = np.sqrt(np.maximum(lines.log_top - log_p, 0.0))
-        inside = cast(Floats, lines.by_pressure(-w))
-        below = 1.0 / np.maximum(lines.inverse_first + lines.inverse_slope * (log_p - lines.log_first), 1e-4)
-        result = np.where(log_p < lines.log_first, -np.inf if self._below_range else below, inside)
-        return np.where(log_p > lines.log_top, -np.inf, result)
+            if back >= _FEWEST:
+                self._water_dense = WaterCurve(log_p[-back:], line.temperature[-back:])
 
     # one state
 
-    def _region_float(self, t: float, lp: float, p: float) -> tuple[int, float, float, float]:
-        """Return the region (or _DIRECT) with the dew and bubble temperatures of the dry mixture and the water dew point.
+    def _survey_float(self, t: float, lp: float) -> tuple[int, float, float, float]:
+        """Return the region (or DIRECT), dew and bubble temperature of the dry mixture, and the water dew point.
 
-        NaN stands for a line that does not exist there.
+        NaN where there is none.
         """
-        nan = math.nan
-        lines = self._lines
-        up = low = nan
-        if not (t > 0.0 and p > 0.0):
-            return _UNKNOWN, nan, nan, nan
+        region, up, low = _GAS, math.nan, math.nan
         if self._odd:
-            region = _DIRECT
-        elif lines is None:
-            region = _GAS if t >= LOWEST_TEMPERATURE else _UNKNOWN
-        elif lp > lines.log_top:
-            region = _GAS if lines.closed else _DIRECT
-            if region == _GAS and t < self._critical_temperature:
-                region = _LIQUID
-        elif lp >= lines.log_first:
-            w = math.sqrt(lines.log_top - lp)
-            up = lines.by_pressure(-w)
-            if lp >= lines.log_last:
-                low = lines.by_pressure(w)
-            if t > up:
-                region = _GAS
-            elif low == low:
-                region = _LIQUID if t < low else _TWO_PHASE
-            else:
-                region = _TWO_PHASE if t >= lines.last_temperature else _DIRECT
-        elif self._below_range:
+            region = _GAS if t > self._hot and lp < _LOG_HOT else DIRECT
+        elif self._never:
             region = _GAS if t >= LOWEST_TEMPERATURE else _UNKNOWN
         else:
-            rest = lines.inverse_first + lines.inverse_slope * (lp - lines.log_first)
-            up = 1.0 / (rest if rest > 1e-4 else 1e-4)
-            region = _GAS if t > up else _TWO_PHASE
-        water = nan
+            for curve in self._curves:
+                state, here, bubble = curve.state_float(t, lp)
+                if not here <= up:
+                    up = here if here == here else up
+                    low = bubble if here == here else low
+                region = _worse(region, state)
+            if region == _GAS and ((t < self._critical_temperature and lp > self._log_top) or t < LOWEST_TEMPERATURE):
+                region = _LIQUID if lp > self._log_top else _UNKNOWN
+        water = math.nan
         if self._wet:
-            water, unsure = self._water_float(lp, region)
+            water, unsure = self._water_float(lp, region == _LIQUID)
             if t < water:
                 region = _TWO_PHASE
-            elif unsure and region != _TWO_PHASE:
-                region = _DIRECT
+            elif unsure and region != _TWO_PHASE and not (t > self._hot and lp < _LOG_HOT and t > _WATER_CRITICAL):
+                region = DIRECT
         return region, up, low, water
 
-    def _water_float(self, lp: float, region: int) -> tuple[float, bool]:
-        """Return the water dew temperature, NaN for none, and whether it should be known but is not."""
+    def _water_float(self, lp: float, liquid: bool) -> tuple[float, bool]:
+        """Return the water dew temperature, NaN for none, and whether there should be one but it is not known."""
         gas, dense = self._water_gas, self._water_dense
-        if gas is not None and lp <= gas.high and region != _LIQUID:
-            return gas.by_pressure(lp if lp > gas.low else gas.low), lp < gas.low
-        if gas is not None and self._water_dense is None and lp <= gas.high:
-            return gas.by_pressure(lp if lp > gas.low else gas.low), lp < gas.low
-        lines = self._lines
-        beyond = lines is None or lp > lines.log_top
-        if beyond or region == _LIQUID:
+        if gas is not None and lp <= gas.high and (not liquid or dense is None):
+            return gas.temperature_float(lp), False
+        if liquid or lp > self._log_top:
             if dense is not None and dense.low <= lp <= dense.high:
-                return dense.by_pressure(lp), False
+                return dense.temperature_float(lp), False
             return math.nan, True
         return math.nan, self._water_unsure
 
@@ -480,28 +422,31 @@ class MixturePhase:
         :param pressure: Pa
         """
         t, p = temperature, pressure
-        if not (t > 0.0 and 0.0 < p < math.inf and t < math.inf):
+        if not (0.0 < t < math.inf and 0.0 < p < math.inf):
             return MixtureVerdict(_UNKNOWN, None, 0, None, None, None, 0)
         lp = log(p)
-        region, up, low, water = self._region_float(t, lp, p)
-        flags = 0
-        if region == _DIRECT:
+        region, up, low, water = self._survey_float(t, lp)
+        direct = region == DIRECT
+        if direct:
             region = self._direct(t, p)
-            flags = int(MixtureFlag.DIRECT)
         region = self._name_float(t, p, region)
-        dew, kind, kelvin = None, 0, None
+        kelvin = None
         if up == up and not water >= up:
             dew, kind, kelvin = up, 1, self.hydrocarbon_uncertainty.kelvin
         elif water == water:
             dew, kind, kelvin = water, 2, self.water_uncertainty.kelvin
+        else:
+            dew, kind = math.nan, 0
+        margin_t = _margin_temperature(t, region, dew, low)
+        margin_p = math.nan if direct or region == _UNKNOWN else self._margin_pressure(t, p, region, t < water)
         return MixtureVerdict(
             region,
-            dew,
+            dew if dew == dew else None,
             kind,
-            self._margin_temperature(t, region, dew, low),
-            self._margin_pressure(t, p, region, flags),
+            margin_t if margin_t == margin_t else None,
+            margin_p if margin_p == margin_p else None,
             kelvin,
-            flags | self._flags(t, p, lp, up, water),
+            self._flags_float(t, p, lp, up, water) | (32 if direct else 0),
         )
 
     def _direct(self, t: float, p: float) -> int:
@@ -518,73 +463,50 @@ class MixturePhase:
 
     def _name_float(self, t: float, p: float, region: int) -> int:
         """Call a gas above the critical point and at or above its density supercritical."""
-        if region == _GAS and t >= self._critical_temperature and p >= self.critical_pressure:
-            inverse = self._critical_temperature / t
-            if p >= self._isochore_scale * t * self._isochore(inverse):
-                return _SUPERCRITICAL
-        return region
+        if region != _GAS or t < self._critical_temperature or p < self._critical_pressure:
+            return region
+        dense = p >= self._isochore_scale * t * self._isochore(self._critical_temperature / t)
+        return _SUPERCRITICAL if dense else _GAS
 
-    def _margin_temperature(self, t: float, region: int, dew: float | None, low: float) -> float | None:
-        if dew is None or region == _UNKNOWN:
-            return None
-        if region == _LIQUID:
-            return t - low if low == low else t - dew
-        margin = t - dew
-        if region == _TWO_PHASE and low == low and t - low < -margin:
-            # never above zero, though tables meet only to their own accuracy
-            return -(t - low) if t > low else 0.0
-        return margin
-
-    def _margin_pressure(self, t: float, p: float, region: int, flags: int) -> float | None:
-        if region == _UNKNOWN or flags:
-            return None
-        best = math.inf
-        inside = region == _TWO_PHASE
-        lines = self._lines
-        depth = -math.inf
-        if lines is not None and t < lines.hottest:
-            u = math.sqrt(lines.hottest - t)
-            if t >= lines.coldest_first:
-                lower = exp(lines.by_temperature(-u))
-            elif self._below_range:
-                lower = math.nan
+    def _margin_pressure(self, t: float, p: float, region: int, wet: bool) -> float:
+        """Return the distance to the nearest line, negative where it has to be crossed to reach the gas; NaN for none."""
+        gap, depth = math.inf, -1.0
+        for curve in self._curves:
+            distance, inside = curve.distance_float(t, p)
+            if inside:
+                depth = distance if distance > depth else depth
             else:
-                lower = exp((1.0 / t - lines.inverse_first) / lines.inverse_slope + lines.log_first)
-            upper = exp(lines.by_temperature(u)) if t >= lines.coldest_top else math.nan
-            a = abs(p - lower) if lower == lower else math.inf
-            b = abs(p - upper) if upper == upper else math.inf
-            best = a if a < b else b
-            if lower < p and not p > upper:
-                depth = best
-        nearest = math.inf
-        for branch in (self._water_gas, self._water_dense):
-            if branch is None:
-                continue
-            for stretch in branch.stretches:
-                if stretch.low <= t <= stretch.high:
-                    distance = abs(p - exp(stretch.log_pressure(t)))
-                    nearest = distance if distance < nearest else nearest
-        if inside:
-            best = best if depth == -math.inf else depth
-            found = best if best < nearest or nearest == math.inf else nearest
-            if depth > -math.inf and nearest < math.inf:
-                found = depth
-            return None if found == math.inf else -found
-        found = best if best < nearest else nearest
-        if found == math.inf:
-            return None
-        return -found if region == _LIQUID else found
+                gap = distance if distance < gap else gap
+        if self._wet:
+            nearest = self._water_distance_float(t, p)
+            if wet:
+                depth = nearest if nearest > depth else depth
+            else:
+                gap = nearest if nearest < gap else gap
+        if region == _TWO_PHASE and depth >= 0.0:
+            gap = depth
+        if gap == math.inf:
+            return math.nan
+        return -gap if region in (_TWO_PHASE, _LIQUID) else gap
 
-    def _flags(self, t: float, p: float, lp: float, up: float, water: float) -> int:
+    def _water_distance_float(self, t: float, p: float) -> float:
+        nearest = math.inf
+        for curve in (self._water_gas, self._water_dense):
+            if curve is not None:
+                distance = curve.distance_float(t, p)
+                nearest = distance if distance < nearest else nearest
+        return nearest
+
+    def _flags_float(self, t: float, p: float, lp: float, up: float, water: float) -> int:
         flags = 0
-        lines = self._lines
-        if lines is not None:
-            if lp > lines.log_top and lines.closed:
-                flags |= 8
-            elif lp < lines.log_first:
-                flags |= 16 if self._below_range else 64
+        if self._curves:
+            first = self._curves[0]
+            if lp > self._log_top and self._closed:
+                flags = 8
+            elif lp < first.log_first:
+                flags = 16 if first.ends_with_equation else 64
         elif self._never:
-            flags |= 16
+            flags = 16
         if self._icy and water == water:
             if t < _TRIPLE and t < water + frost_excess(water):
                 flags |= 2
@@ -592,10 +514,102 @@ class MixturePhase:
                 flags |= 1
         if t < up and t < water:
             flags |= 128
-        tc, pc = self._critical_temperature, self.critical_pressure
-        if self.critical is not None and abs(t - tc) < _NEAR_TEMPERATURE * tc and abs(p - pc) < _NEAR_PRESSURE * pc:
-            flags |= 4
+        if self.critical is not None:
+            tc, pc = self._critical_temperature, self._critical_pressure
+            if abs(t - tc) < _NEAR_TEMPERATURE * tc and abs(p - pc) < _NEAR_PRESSURE * pc:
+                flags |= 4
         return flags
+
+    # rows
+
+    def _survey_block(self, t: Array, lp: Array) -> tuple[NDArray[np.int8], Array, Array, Array]:
+        n = t.size
+        region = np.full(n, _GAS, dtype=np.int8)
+        up, low = np.full(n, math.nan), np.full(n, math.nan)
+        if self._odd:
+            region[~((t > self._hot) & (lp < _LOG_HOT))] = DIRECT
+        elif self._never:
+            region[~(t >= LOWEST_TEMPERATURE)] = _UNKNOWN
+        else:
+            for number, curve in enumerate(self._curves):
+                state, here, bubble = curve.state_block(t, lp)
+                if number == 0:
+                    region, up, low = state, here, bubble
+                    continue
+                higher = ~(here <= up) & (here == here)
+                up, low = np.where(higher, here, up), np.where(higher, bubble, low)
+                region = _RANKED.take(np.maximum(_RANK.take(region), _RANK.take(state)))
+            beyond = lp > self._log_top
+            gas = region == _GAS
+            cold = gas & (t < LOWEST_TEMPERATURE)
+            region[cold] = _UNKNOWN
+            region[gas & beyond & ((t < self._critical_temperature) | cold)] = _LIQUID
+        water = np.full(n, math.nan)
+        if self._wet:
+            water, unsure = self._water_block(lp, region == _LIQUID)
+            wet = t < water
+            lost = unsure & ~wet & (region != _TWO_PHASE)
+            lost &= ~((t > self._hot) & (lp < _LOG_HOT) & (t > _WATER_CRITICAL))
+            region[wet] = _TWO_PHASE
+            region[lost] = DIRECT
+        return region, up, low, water
+
+    def _water_block(self, lp: Array, liquid: NDArray[np.bool_]) -> tuple[Array, NDArray[np.bool_]]:
+        gas, dense = self._water_gas, self._water_dense
+        water = np.full(lp.size, math.nan)
+        unsure = np.full(lp.size, self._water_unsure)
+        beyond = liquid | (lp > self._log_top)
+        unsure[beyond] = True
+        if dense is not None:
+            rows = np.flatnonzero(beyond & (dense.low <= lp) & (lp <= dense.high))
+            water[rows] = dense.temperature_block(lp.take(rows))
+            unsure[rows] = False
+        if gas is not None:
+            covered = lp <= gas.high
+            if dense is not None:
+                covered &= ~liquid
+            if covered.all():
+                return gas.temperature_block(lp), np.zeros(lp.size, dtype=bool)
+            rows = np.flatnonzero(covered)
+            water[rows] = gas.temperature_block(lp.take(rows))
+            unsure[rows] = False
+        return water, unsure
+
+    def _finish_block(self, t: Array, p: Array, region: NDArray[np.int8]) -> NDArray[np.bool_]:
+        """Put what the curves leave open to the direct test, name supercritical rows; return which rows were direct."""
+        direct = region == DIRECT
+        for row in np.flatnonzero(direct).tolist():
+            region[row] = self._direct(float(t[row]), float(p[row]))
+        rows = np.flatnonzero((region == _GAS) & (t >= self._critical_temperature) & (p >= self._critical_pressure))
+        if rows.size:
+            here = t.take(rows)
+            dense = p.take(rows) >= self._isochore_scale * here * self._isochore(self._critical_temperature / here)
+            region[rows[dense]] = _SUPERCRITICAL
+        return direct
+
+    def region_block(self, temperature: Array, pressure: Array) -> NDArray[np.int8]:
+        """Return the regions of rows alone.
+
+        :param temperature: K, shape (n,)
+        :param pressure: Pa, shape (n,)
+        """
+        parts = [
+            self._region_rows(temperature[i : i + _BLOCK_ROWS], pressure[i : i + _BLOCK_ROWS])
+            for i in range(0, temperature.size, _BLOCK_ROWS)
+        ]
+        return np.concatenate(parts) if parts else np.empty(0, dtype=np.int8)
+
+    def _region_rows(self, t: Array, p: Array) -> NDArray[np.int8]:
+        usable = (t > 0.0) & (p > 0.0) & (t < math.inf) & (p < math.inf)
+        every = bool(usable.all())
+        if not every:
+            t, p = np.where(usable, t, 300.0), np.where(usable, p, 1e5)
+        with np.errstate(all="ignore"):
+            region, _, _, _ = self._survey_block(t, log(p))
+            if not every:
+                region[~usable] = _UNKNOWN
+            self._finish_block(t, p, region)
+        return region
 
     def block(self, temperature: Array, pressure: Array) -> MixtureBlock:
         """Return the verdicts of rows, with the bits that ``at`` gives for each.
@@ -603,7 +617,105 @@ class MixturePhase:
         :param temperature: K, shape (n,)
         :param pressure: Pa, shape (n,)
         """
-        raise NotImplementedError
+        if temperature.size <= _BLOCK_ROWS:
+            return self._rows(temperature, pressure)
+        parts = [
+            self._rows(temperature[i : i + _BLOCK_ROWS], pressure[i : i + _BLOCK_ROWS])
+            for i in range(0, temperature.size, _BLOCK_ROWS)
+        ]
+        return MixtureBlock(*(np.concatenate(columns) for columns in zip(*parts, strict=True)))
+
+    def _rows(self, t: Array, p: Array) -> MixtureBlock:
+        usable = (t > 0.0) & (p > 0.0) & (t < math.inf) & (p < math.inf)
+        every = bool(usable.all())
+        if not every:
+            t, p = np.where(usable, t, 300.0), np.where(usable, p, 1e5)
+        with np.errstate(all="ignore"):
+            lp = log(p)
+            region, up, low, water = self._survey_block(t, lp)
+            if not every:
+                region[~usable] = _UNKNOWN
+            direct = self._finish_block(t, p, region)
+            if self._wet:
+                by_water = (water == water) & ~((up == up) & ~(water >= up))
+                dew = np.where(by_water, water, up)
+                kind = np.where(by_water, np.int8(2), np.int8(1))
+            else:
+                dew, kind = up, np.ones(t.size, dtype=np.int8)
+            none = dew != dew
+            kelvin = np.where(kind == 2, self.water_uncertainty.kelvin, self.hydrocarbon_uncertainty.kelvin)
+            if none.any():
+                kind[none] = 0
+                kelvin[none] = math.nan
+            margin_t = self._margin_temperature_block(t, region, dew, low)
+            margin_p = self._margin_pressure_block(t, p, region, t < water)
+            unknown = direct | (region == _UNKNOWN)
+            if unknown.any():
+                margin_p[unknown] = math.nan
+            flags = self._flags_block(t, p, lp, up, water)
+            flags[direct] |= 32
+        if not every:
+            lost = ~usable
+            dew, margin_t, margin_p, kelvin = (np.where(lost, math.nan, a) for a in (dew, margin_t, margin_p, kelvin))
+            kind[lost] = 0
+            flags[lost] = 0
+        return MixtureBlock(region, dew, kind, margin_t, margin_p, kelvin, flags)
+
+    @staticmethod
+    def _margin_temperature_block(t: Array, region: NDArray[np.int8], dew: Array, low: Array) -> Array:
+        margin = t - dew
+        rows = np.flatnonzero((region == _LIQUID) | (region == _TWO_PHASE))
+        if rows.size:
+            rise = t.take(rows) - low.take(rows)
+            here = margin.take(rows)
+            nearer = np.where(region.take(rows) == _LIQUID, rise == rise, rise < -here)
+            inner = np.where(rise > 0.0, -rise, 0.0)
+            margin[rows] = np.where(nearer, np.where(region.take(rows) == _LIQUID, rise, inner), here)
+        margin[region == _UNKNOWN] = math.nan
+        return margin
+
+    def _margin_pressure_block(self, t: Array, p: Array, region: NDArray[np.int8], wet: NDArray[np.bool_]) -> Array:
+        gap, depth = np.full(t.size, math.inf), np.full(t.size, -1.0)
+        for curve in self._curves:
+            distance, inside = curve.distance_block(t, p)
+            depth = np.where(inside & (distance > depth), distance, depth)
+            gap = np.where(~inside & (distance < gap), distance, gap)
+        if self._wet:
+            nearest = np.full(t.size, math.inf)
+            for water in (self._water_gas, self._water_dense):
+                if water is not None:
+                    distance = water.distance_block(t, p)
+                    nearest = np.where(distance < nearest, distance, nearest)
+            depth = np.where(wet & (nearest > depth), nearest, depth)
+            gap = np.where(~wet & (nearest < gap), nearest, gap)
+        split = region == _TWO_PHASE
+        gap = np.where(split & (depth >= 0.0), depth, gap)
+        gap = np.where(split | (region == _LIQUID), -gap, gap)
+        gap[np.isinf(gap)] = math.nan
+        return gap
+
+    def _flags_block(self, t: Array, p: Array, lp: Array, up: Array, water: Array) -> NDArray[np.int16]:
+        flags = np.zeros(t.size, dtype=np.int16)
+        if self._curves:
+            first = self._curves[0]
+            flags[lp < first.log_first] = 16 if first.ends_with_equation else 64
+            if self._closed:
+                flags[lp > self._log_top] = 8
+        elif self._never:
+            flags[:] = 16
+        if self._icy and self._wet:
+            known = water == water
+            excess = 0.12 * (273.16 - water)
+            frost = water + np.where(273.16 - water > 0.0, excess, 0.0)
+            flags[known & (t < _TRIPLE) & (t < frost)] |= 2
+            if self._hydrates:
+                near = known & (t < _HYDRATE_TEMPERATURE) & (t < water + _HYDRATE_NEAR) & (p > _HYDRATE_PRESSURE)
+                flags[near] |= 1
+            flags[(t < up) & (t < water)] |= 128
+        if self.critical is not None:
+            tc, pc = self._critical_temperature, self._critical_pressure
+            flags[(np.abs(t - tc) < _NEAR_TEMPERATURE * tc) & (np.abs(p - pc) < _NEAR_PRESSURE * pc)] |= 4
+        return flags
 
     # other questions
 
@@ -629,17 +741,17 @@ class MixturePhase:
         empty = np.empty(0)
         line = self._water_gas or self._water_dense
         water_lp = np.linspace(line.low, line.high, _WATER_NODES) if line else empty
-        water_t = cast(Floats, line.by_pressure(water_lp)) if line else empty
+        water_t = line.temperature_block(water_lp) if line else empty
         if b is None:
             return MixtureOutline(empty, empty, water_t, np.exp(water_lp), None, None, None, False, self.end)
         return MixtureOutline(
             np.exp(b.log_temperature),
-            np.exp(b.log_pressure),
+            np.exp(b.log_pressure + self._shift),
             water_t,
             np.exp(water_lp),
-            b.critical,
-            b.cricondentherm,
-            b.cricondenbar,
+            self._shifted(b.critical),
+            self._shifted(b.cricondentherm),
+            self._shifted(b.cricondenbar),
             b.complete,
             b.end,
         )
@@ -668,26 +780,28 @@ def mixture_phase(system: GergSystem | CubicMixture, fractions: Sequence[float])
     if isinstance(system, GergSystem):
         if len(present) < len(fractions):
             system = GergSystem(system.data, [system.components[i] for i in present])
-        names = system.components
-        dry_names = [c for c in names if c != WATER]
-        dry = GergEnergy(GergSystem(system.data, dry_names)) if WATER in names and dry_names else None
-        hottest = max(t for t, c in zip(system.critical_temperatures.tolist(), names, strict=True) if c != WATER or not dry)
-        # pentanes and heavier: their binary data are scarcer
-        gas = DewUncertainty(1.0 if hottest < _LIGHT else 3.0, "estimate")
-        both = (gas, DewUncertainty(2.0, "estimate"))
-        return MixturePhase(GergEnergy(system), system.fluid(z), z, dry, cold_water=True, uncertainty=both)
-    substances = [system.substances[i] for i in present]
-    polar = any("associating" in s.flags and s.id != WATER for s in substances)
-    wet = any(s.id == WATER for s in substances)
-    kept = [i for i in present if system.substances[i].id != WATER]
-    fluid = system.fluid(fractions)
-    hottest = max(s.critical_temperature for s in substances)
-    gas = DewUncertainty(10.0 if fluid.missing_pairs else 3.0 if hottest < _LIGHT else 5.0, "estimate")
+        energy: MixtureEnergy = GergEnergy(system)
+        fluid: Fluid = system.fluid(z)
+        miscible, missing, allowance = False, False, (1.0, 3.0, 2.0)
+    else:
+        energy = CubicEnergy(system, present)
+        cubic = system.fluid(fractions)
+        substances = [system.substances[i] for i in present]
+        miscible = any("associating" in s.flags and s.id != WATER for s in substances)
+        fluid, missing, allowance = cubic, bool(cubic.missing_pairs), (3.0, 5.0, 5.0)
+    names = energy.components
+    dry = [i for i, c in enumerate(names) if c != WATER]
+    light, heavy, water = allowance
+    # pentanes and heavier: their binary data are scarcer, and traces of them decide
+    kelvin = light if all(energy.critical_temperatures[i] < _LIGHT for i in dry) else heavy
+    if missing:
+        kelvin, water = 2.0 * heavy, 2.0 * water
     return MixturePhase(
-        CubicEnergy(system, present),
+        energy,
         fluid,
         z,
-        CubicEnergy(system, kept) if wet and kept and not polar else None,
-        checked=polar,
-        uncertainty=(gas, DewUncertainty(5.0, "estimate")),
+        dry if 0 < len(dry) < len(names) and not miscible else None,
+        checked=miscible,
+        cold_water=isinstance(system, GergSystem),
+        uncertainty=(DewUncertainty(kelvin, "estimate"), DewUncertainty(water, "estimate")),
     )

@@ -19,7 +19,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from gasapi.engine.phase.energy import Floats, MixtureEnergy
-from gasapi.engine.phase.water import SOLUTES, WATER
+from gasapi.engine.phase.water import COLD, COLD_DENSITY, SOLUTES, WATER, LiquidWater
 from gasapi.engine.protocol import Branch, Status
 
 __all__ = ["Stability", "StabilityResult", "StabilityTest"]
@@ -63,16 +63,17 @@ class StabilityTest:
 
     :param energy: the equation of state
     :param fractions: mole fractions of the feed, shape (n,), all above 0, [-]
-    :param dry: whether water keeps to its own trial
+    :param liquid_water: liquid water by this equation, where water keeps to its own trial; else None
     """
 
-    def __init__(self, energy: MixtureEnergy, fractions: Floats, dry: bool) -> None:
+    def __init__(self, energy: MixtureEnergy, fractions: Floats, liquid_water: LiquidWater | None) -> None:
         self.energy = energy
         self.fractions = fractions
         n = fractions.size
         names = energy.components
         everything = np.ones(n, dtype=bool)
-        self._water = names.index(WATER) if dry and WATER in names else -1
+        self._liquid_water = liquid_water
+        self._water = liquid_water.index if liquid_water is not None else -1
         self._hydrocarbon = np.array([c != WATER for c in names]) if self._water >= 0 else everything
         self._aqueous = np.array([c == WATER or c in SOLUTES for c in names])
 
@@ -133,6 +134,9 @@ class StabilityTest:
             log_f, feed_density = feed
             trials = self._trials(temperature, pressure)
             worst = StabilityResult(Stability.STABLE, 0.0, self.fractions, feed_density, feed_density)
+            if self._liquid_water is not None and temperature < COLD:
+                # below the equation's own liquid water there is no root for the aqueous trial
+                worst = self._supercooled(temperature, pressure, log_f, worst)
             open_trials = False
             for branch in (Branch.LIQUID, Branch.GAS):
                 masks = np.array([m for b, m, _ in trials if b == branch])
@@ -143,9 +147,22 @@ class StabilityTest:
                 if found.verdict == Stability.UNSTABLE and found.distance < worst.distance:
                     worst = found
                 open_trials |= unsettled
-            if worst.verdict == Stability.STABLE and open_trials:
+            if worst.verdict != Stability.UNSTABLE and open_trials:
                 return worst._replace(verdict=Stability.UNKNOWN)
             return worst
+
+    def _supercooled(self, temperature: float, pressure: float, log_f: Floats, worst: StabilityResult) -> StabilityResult:
+        """Compare the feed with pure liquid water by its vapour pressure."""
+        assert self._liquid_water is not None
+        log_w, _, known = self._liquid_water.log_fugacity(np.array([temperature]), np.array([pressure]))
+        distance = float(log_w[0] - log_f[self._water] - np.log(pressure))
+        if not known[0]:
+            return worst._replace(verdict=Stability.UNKNOWN)
+        if distance > -_PROOF:
+            return worst
+        pure = np.zeros(self.fractions.size)
+        pure[self._water] = 1.0
+        return StabilityResult(Stability.UNSTABLE, distance, pure, COLD_DENSITY, worst.feed_density)
 
     def _descend(
         self,
@@ -163,7 +180,6 @@ class StabilityTest:
         w = start / start.sum(axis=1)[:, None]
         best = StabilityResult(Stability.STABLE, 0.0, self.fractions, feed_density, feed_density)
         density = np.full(m, np.nan)
-        unsettled = np.ones(m, dtype=bool)
         alive = np.ones(m, dtype=bool)
         for _ in range(_SUBSTITUTIONS):
             log_phi, rho, status = self.energy.log_fugacity(t, p, w, branch)

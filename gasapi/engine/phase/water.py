@@ -19,7 +19,17 @@ from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.incipient import IncipientPhase
 from gasapi.engine.protocol import Branch, Fluid, Status
 
-__all__ = ["SOLUTES", "WATER", "LiquidWater", "WaterLine", "frost_excess", "supercooled_vapour_pressure", "water_line"]
+__all__ = [
+    "COLD",
+    "COLD_DENSITY",
+    "SOLUTES",
+    "WATER",
+    "LiquidWater",
+    "WaterLine",
+    "frost_excess",
+    "supercooled_vapour_pressure",
+    "water_line",
+]
 
 WATER: Final = "water"
 
@@ -28,11 +38,11 @@ SOLUTES: Final = frozenset(
 )
 """What the aqueous phase may hold besides water."""
 
-_COLD: Final = 240.0
-_COLD_DENSITY: Final = 54_400.0
+COLD: Final = 240.0
+COLD_DENSITY: Final = 54_400.0
 _LOWEST: Final = 150.0
 _PUREST: Final = 0.85
-_MOST_STEPS: Final = 25
+_MOST_STEPS: Final = 16
 _LONGEST_STEP: Final = 0.06
 _DONE: Final = 1e-9
 
@@ -84,11 +94,11 @@ class LiquidWater:
         self._scale: float | None = None
         if cold:
             # the Poynting factor is taken off again: below the join it has a constant volume
-            log_f, _, good = self._own(np.array([_COLD]), np.array([1e5]))
+            log_f, _, good = self._own(np.array([COLD]), np.array([1e5]))
             self._scale = math.nan
             if good[0]:
-                reduced = float(log_f[0]) - 1e5 / (_COLD_DENSITY * energy.gas_constant * _COLD)
-                self._scale = reduced - float(np.log(supercooled_vapour_pressure(np.array([_COLD])))[0])
+                reduced = float(log_f[0]) - 1e5 / (COLD_DENSITY * energy.gas_constant * COLD)
+                self._scale = reduced - float(np.log(supercooled_vapour_pressure(np.array([COLD])))[0])
 
     def _own(self, temperature: Floats, pressure: Floats) -> tuple[Floats, Floats, NDArray[np.bool_]]:
         rows = np.broadcast_to(self._pure, (temperature.size, self._pure.size))
@@ -102,14 +112,14 @@ class LiquidWater:
         :param pressure: Pa, shape (m,)
         """
         value, slope, good = np.empty(temperature.size), np.empty(temperature.size), np.zeros(temperature.size, dtype=bool)
-        cold = temperature < _COLD if self._scale is not None else np.zeros(temperature.size, dtype=bool)
+        cold = temperature < COLD if self._scale is not None else np.zeros(temperature.size, dtype=bool)
         warm = np.flatnonzero(~cold)
         if warm.size:
             value[warm], slope[warm], good[warm] = self._own(temperature[warm], pressure[warm])
         rows = np.flatnonzero(cold)
         if rows.size and self._scale is not None:
             t = temperature[rows]
-            poynting = pressure[rows] / (_COLD_DENSITY * self._energy.gas_constant * t)
+            poynting = pressure[rows] / (COLD_DENSITY * self._energy.gas_constant * t)
             here = np.log(supercooled_vapour_pressure(t))
             value[rows] = self._scale + here + poynting
             slope[rows] = (np.log(supercooled_vapour_pressure(t * 1.0001)) - here) / math.log(1.0001) - poynting
@@ -171,7 +181,7 @@ def water_line(
             rows = rows[~done]
             if rows.size == 0:
                 break
-    warm = np.flatnonzero(found & (t > _COLD + 1.0))
+    warm = np.flatnonzero(found & (t > COLD + 1.0))
     if warm.size:
         t[warm] = _with_solutes(energy, fractions, water, log_pressure[warm], t[warm], density[warm])
     return WaterLine(log_pressure, np.where(found, t, np.nan), found)

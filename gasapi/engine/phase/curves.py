@@ -1,0 +1,297 @@
+"""A mixture's boundaries as smooth functions, each evaluated in a microsecond: dew and bubble line, water dew line."""
+
+from __future__ import annotations
+
+import math
+from itertools import pairwise
+from typing import Final, NamedTuple, cast
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.interpolate import CubicSpline, PchipInterpolator
+
+from gasapi.engine.elementary import Array, exp
+from gasapi.engine.phase.boundary import Boundary, NamedPoint, position_of
+from gasapi.engine.phase.energy import Floats
+from gasapi.engine.phase.region import Region
+from gasapi.engine.phase.table import CubicTable
+
+__all__ = ["DIRECT", "BoundaryCurve", "OddBoundary", "WaterCurve", "spline_table"]
+
+DIRECT: Final = -1
+"""In place of a region: the curve does not tell."""
+
+_GAS: Final = int(Region.GAS)
+_LIQUID: Final = int(Region.LIQUID)
+_TWO_PHASE: Final = int(Region.TWO_PHASE)
+_KNOTS: Final = 160
+_FINE: Final = 8
+_STRETCH_KNOTS: Final = 96
+_LEAST_INVERSE: Final = 1e-4
+_KELVIN: Final = 1e-7
+_LOG: Final = 1e-10
+
+
+class OddBoundary(Exception):
+    """A boundary that is not of the usual shape."""
+
+
+def spline_table(x: Floats, y: Floats, grain: float) -> CubicTable:
+    """Return a curve through points as a table on equal cells, its values at the knots rounded.
+
+    :param x: abscissas, strictly rising, shape (n,)
+    :param y: ordinates, shape (n,)
+    :param grain: what the values and slopes at the knots are rounded to
+    """
+    spline = CubicSpline(x, y)
+    knots = np.linspace(x[0], x[-1], _KNOTS + 1)
+    values = np.round(spline(knots) / grain) * grain
+    slopes = np.round(spline(knots, 1) / grain) * grain
+    return CubicTable(float(x[0]), float(x[-1]), values, slopes)
+
+
+def _falling(values: Floats) -> int:
+    """Return how many values from the first on fall strictly."""
+    steps = np.diff(values) < 0.0
+    return values.size if bool(steps.all()) else int(steps.argmin()) + 1
+
+
+class BoundaryCurve:
+    """Dew and bubble line of a mixture. Immutable.
+
+    T(p) is one smooth function of w = -sqrt(ln p_max - ln p) on the dew side and +sqrt on the other; ln p(T) one of
+    u = -+sqrt(T_max - T). Below its lowest pressure the dew line goes on straight in ln p against 1/T.
+
+    :param b: the traced boundary
+    :param shift: added to its ln p: the share of the pressure that the traced mixture has
+    :param coldest: K; a line that begins below is taken to begin there because the equation ends
+    :param dew_only: whether the bubble line is not to be believed: below its dew temperature all is two-phase
+    :raises OddBoundary: for a boundary that turns more often than this
+    """
+
+    def __init__(self, b: Boundary, shift: float, coldest: float, dew_only: bool) -> None:
+        lp, t = b.log_pressure + shift, np.exp(b.log_temperature)
+        if lp.size < 8:
+            raise OddBoundary
+        top = _node(b, b.cricondenbar, lp)
+        if _falling(lp[: top + 1][::-1]) != top + 1:
+            raise OddBoundary
+        self.closed = b.cricondenbar is not None
+        fall = _falling(lp[top:]) if self.closed else 1
+        used = lp[: top + fall]
+        self.log_top = round(float(lp[top]), 10)
+        w = np.sqrt(np.maximum(self.log_top - used, 0.0))
+        w[: top + 1] *= -1.0
+        w[top] = 0.0
+        self.log_first = round(float(lp[0]), 10)
+        self.log_last = round(float(used[-1]), 10) if fall > 1 and not dew_only else math.inf
+        self.last_temperature = -math.inf if dew_only else float(t[top + fall - 1])
+
+        hot = _node(b, b.cricondentherm, t)
+        if _falling(t[: hot + 1][::-1]) != hot + 1:
+            raise OddBoundary
+        fall_hot = _falling(t[hot:]) if b.cricondentherm is not None else 1
+        self.hottest = round(float(t[hot]), 7)
+        u = np.sqrt(np.maximum(self.hottest - t[: hot + fall_hot], 0.0))
+        u[: hot + 1] *= -1.0
+        u[hot] = 0.0
+        self.coldest_first = float(t[0])
+        self.coldest_top = float(t[hot + fall_hot - 1]) if fall_hot > 1 and not dew_only else math.inf
+        self.inverse_first = 1.0 / self.coldest_first
+        self.inverse_slope = -float(b.temperature_slope[0] / b.pressure_slope[0]) / self.coldest_first
+        if not self.inverse_slope < 0.0:
+            raise OddBoundary
+        self.ends_with_equation = self.coldest_first < 1.06 * coldest
+        try:
+            self.by_pressure = spline_table(w, t[: top + fall], _KELVIN)
+            self.by_temperature = spline_table(u, lp[: hot + fall_hot], _LOG)
+        except ValueError as error:
+            raise OddBoundary from error
+
+    def dew_temperature(self, log_pressure: Floats) -> Floats:
+        """Return the dew temperature, K, shape (m,), -inf where there is none; for use on construction."""
+        _, up, _ = self.state_block(np.zeros_like(log_pressure), log_pressure)
+        return np.where(np.isnan(up), -np.inf, up)
+
+    def state_float(self, t: float, lp: float) -> tuple[int, float, float]:
+        """Return the region (or DIRECT) with the dew and the bubble temperature at this pressure, K.
+
+        NaN where there is none; the bubble temperature only where the state is not above the dew line.
+
+        :param t: temperature, K
+        :param lp: ln p
+        """
+        if lp > self.log_top:
+            return (_GAS if self.closed else DIRECT), math.nan, math.nan
+        if lp < self.log_first:
+            if self.ends_with_equation:
+                return _GAS, math.nan, math.nan
+            rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
+            up = 1.0 / (rest if rest > _LEAST_INVERSE else _LEAST_INVERSE)
+            return (_GAS if t > up else _TWO_PHASE), up, math.nan
+        w = math.sqrt(self.log_top - lp)
+        up = self.by_pressure(-w)
+        if t > up:
+            return _GAS, up, math.nan
+        low = self.by_pressure(w) if lp >= self.log_last else math.nan
+        if low == low:
+            return (_LIQUID if t < low else _TWO_PHASE), up, low
+        return (_TWO_PHASE if t >= self.last_temperature else DIRECT), up, low
+
+    def state_block(self, t: Array, lp: Array) -> tuple[NDArray[np.int8], Array, Array]:
+        """Return the same for rows, each of shape (n,)."""
+        w = np.sqrt(np.maximum(self.log_top - lp, 0.0))
+        up = self.by_pressure(-w)
+        low = np.full(t.size, np.nan)
+        known = np.flatnonzero((lp >= self.log_last) & ~(t > up))
+        low[known] = self.by_pressure(w.take(known))
+        below = np.full(t.size, _TWO_PHASE, dtype=np.int8)
+        below[t < low] = _LIQUID
+        before = lp < self.log_first
+        below[(low != low) & ~before & ~(t >= self.last_temperature)] = DIRECT
+        if before.any():
+            if self.ends_with_equation:
+                up = np.where(before, np.nan, up)
+                below[before] = _GAS
+            else:
+                rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
+                up = np.where(before, 1.0 / np.where(rest > _LEAST_INVERSE, rest, _LEAST_INVERSE), up)
+        state = np.where(t > up, np.int8(_GAS), below)
+        above = lp > self.log_top
+        if above.any():
+            state[above] = _GAS if self.closed else DIRECT
+            up = np.where(above, np.nan, up)
+            low = np.where(above, np.nan, low)
+        return state, up, low
+
+    def distance_float(self, t: float, p: float) -> tuple[float, bool]:
+        """Return how far the pressure is from the nearer line at this temperature, and whether it is between two lines.
+
+        Pa; inf where there is no line.
+
+        :param t: temperature, K
+        :param p: pressure, Pa
+        """
+        if not t < self.hottest:
+            return math.inf, False
+        u = math.sqrt(self.hottest - t)
+        if t >= self.coldest_first:
+            lower = exp(self.by_temperature(-u))
+        elif self.ends_with_equation:
+            return math.inf, False
+        else:
+            lower = exp((1.0 / t - self.inverse_first) / self.inverse_slope + self.log_first)
+        upper = exp(self.by_temperature(u)) if t >= self.coldest_top else math.inf
+        down, up = p - lower, upper - p
+        inside = down > 0.0 and up > 0.0
+        down = down if down > 0.0 else -down
+        up = up if up > 0.0 else -up
+        return (down if down < up else up), inside
+
+    def distance_block(self, t: Array, p: Array) -> tuple[Array, NDArray[np.bool_]]:
+        """Return the same for rows, each of shape (n,)."""
+        distance = np.full(t.size, math.inf)
+        inside = np.zeros(t.size, dtype=bool)
+        crossed = t < self.hottest
+        if self.ends_with_equation:
+            crossed &= t >= self.coldest_first
+        rows = np.flatnonzero(crossed)
+        if rows.size == 0:
+            return distance, inside
+        t, p = t.take(rows), p.take(rows)
+        u = np.sqrt(self.hottest - t)
+        argument = self.by_temperature(-u)
+        cold = t < self.coldest_first
+        if cold.any():
+            argument = np.where(cold, (1.0 / t - self.inverse_first) / self.inverse_slope + self.log_first, argument)
+        down = p - exp(argument)
+        reached = t >= self.coldest_top
+        up = np.where(reached, exp(self.by_temperature(np.where(reached, u, 0.0))), math.inf) - p
+        inside[rows] = (down > 0.0) & (up > 0.0)
+        down, up = np.abs(down), np.abs(up)
+        distance[rows] = np.where(down < up, down, up)
+        return distance, inside
+
+
+def _node(b: Boundary, point: NamedPoint | None, values: Floats) -> int:
+    """Return the number of the node at a named point, or that of the highest value where there is no such point."""
+    if point is None:
+        return int(values.argmax())
+    # a hair below it finds the node itself
+    return int(np.searchsorted(b.position, position_of(b, point) - 1e-9))
+
+
+class _Stretch(NamedTuple):
+    """A rising or falling part of a water line: ln p as a function of T between two temperatures."""
+
+    low: float
+    high: float
+    log_pressure: CubicTable
+
+
+class WaterCurve:
+    """The water dew line over a range of pressure. Immutable.
+
+    :param log_pressure: ln p, rising, shape (n,)
+    :param temperature: K, shape (n,)
+    """
+
+    def __init__(self, log_pressure: Floats, temperature: Floats) -> None:
+        self.low, self.high = float(log_pressure[0]), float(log_pressure[-1])
+        self.by_pressure = spline_table(log_pressure, temperature, _KELVIN)
+        fine = np.linspace(self.low, self.high, _FINE * (log_pressure.size - 1) + 1)
+        t = cast(Floats, self.by_pressure(fine))
+        steps = np.diff(t)
+        turns = [0, *(np.flatnonzero(steps[1:] * steps[:-1] < 0.0) + 1).tolist(), t.size - 1]
+        stretches = []
+        for a, z in pairwise(turns):
+            if z - a < 3 or not bool((steps[a:z] != 0.0).all()):
+                continue
+            ts, lps = t[a : z + 1], fine[a : z + 1]
+            if ts[-1] < ts[0]:
+                ts, lps = ts[::-1], lps[::-1]
+            inverse = PchipInterpolator(ts, lps)
+            knots = np.linspace(ts[0], ts[-1], _STRETCH_KNOTS + 1)
+            table = CubicTable(float(ts[0]), float(ts[-1]), np.round(inverse(knots), 10), np.round(inverse(knots, 1), 10))
+            stretches.append(_Stretch(float(ts[0]), float(ts[-1]), table))
+        self._stretches = tuple(stretches)
+        first = self.by_pressure(self.low)
+        self._inverse_first = 1.0 / first
+        self._inverse_slope = -(self.by_pressure(self.low + 0.01) - first) / (0.01 * first * first)
+
+    def temperature_float(self, lp: float) -> float:
+        """Return the dew temperature, K, below the lowest pressure by a straight line in ln p against 1/T."""
+        if lp < self.low:
+            rest = self._inverse_first + self._inverse_slope * (lp - self.low)
+            return 1.0 / (rest if rest > _LEAST_INVERSE else _LEAST_INVERSE)
+        return self.by_pressure(lp)
+
+    def temperature_block(self, lp: Array) -> Array:
+        """Return the same for rows, shape (n,)."""
+        result = self.by_pressure(lp)
+        before = lp < self.low
+        if before.any():
+            rest = self._inverse_first + self._inverse_slope * (lp - self.low)
+            result = np.where(before, 1.0 / np.where(rest > _LEAST_INVERSE, rest, _LEAST_INVERSE), result)
+        return result
+
+    def distance_float(self, t: float, p: float) -> float:
+        """Return how far the pressure is from the nearest point of the line at this temperature, Pa, inf for none."""
+        nearest = math.inf
+        for stretch in self._stretches:
+            if stretch.low <= t <= stretch.high:
+                distance = p - exp(stretch.log_pressure(t))
+                distance = distance if distance > 0.0 else -distance
+                nearest = distance if distance < nearest else nearest
+        return nearest
+
+    def distance_block(self, t: Array, p: Array) -> Array:
+        """Return the same for rows, shape (n,)."""
+        nearest = np.full(t.size, math.inf)
+        for stretch in self._stretches:
+            rows = np.flatnonzero((t >= stretch.low) & (t <= stretch.high))
+            if rows.size:
+                distance = np.abs(p.take(rows) - exp(stretch.log_pressure(t.take(rows))))
+                here = nearest.take(rows)
+                nearest[rows] = np.where(distance < here, distance, here)
+        return nearest
