@@ -307,7 +307,9 @@ class ReducedFluid:
             limit[rows] = self.branch_ends(temperature[rows], branch)
             side = high if branch == Branch.GAS else low
             side[rows] = limit[rows]
-        return _solve_block(self.isotherm(temperature), pressure / temperature, x, low, high, limit)
+        # a step from where F is flat divides by zero and is replaced
+        with np.errstate(all="ignore"):
+            return _solve_block(self.isotherm(temperature), pressure / temperature, x, low, high, limit)
 
 
 def _solve(isotherm: Isotherm[float], target: float, x: float, low: float, high: float, limit: float) -> ReducedRoot:

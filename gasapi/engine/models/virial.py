@@ -35,7 +35,7 @@ from gasapi.engine.models.cubic import GAS_CONSTANT, refusal
 from gasapi.engine.protocol import Branch, Fluid, PressureDerivatives, Root, Status
 from gasapi.gases.records import CubicPair, Substance
 
-__all__ = ["ID", "NAME", "SOURCE", "Virial", "build", "serves"]
+__all__ = ["DENSITY_LIMIT", "DEPARTURE_LIMIT", "ID", "NAME", "POLAR_CLASSES", "SOURCE", "Virial", "build", "serves"]
 
 ID = "virial"
 NAME = "Virial equation with the second coefficient of Tsonopoulos"
@@ -132,6 +132,10 @@ _ALKANOLS: Final = frozenset({"1-butanol", "1-pentanol", "1-propanol", "ethanol"
 _ALKANOL_DIPOLE: Final = 1.7
 _METHANOL: Final = (0.0878, 0.0525)
 _WATER: Final = (-0.0109, 0.0)
+
+
+POLAR_CLASSES: Final = _OXYGENATED | _HALIDES_AND_SULFIDES | _ALKANOLS | {"methanol", "water", "heavy-water"}
+"""Ids of the gases that have a polar term."""
 
 
 class _Quantum(NamedTuple):
