@@ -15,7 +15,7 @@ from gasapi.service.selection import choose
 from gasapi.service.two_phase import split
 from gasapi.service.uncertainty import expanded_density_uncertainty
 
-__all__ = ["AMBIENT_SHARE", "Answered", "answer_state", "solve_state"]
+__all__ = ["AMBIENT_SHARE", "CRITICAL_AMPLIFICATION_MOST", "Answered", "answer_state", "solve_state"]
 
 AMBIENT_SHARE: Final = 0.1
 """The part of the absolute pressure above which an assumed ambient lowers the level."""
@@ -25,7 +25,9 @@ _TWO_PHASE_ACCEPTED: Final = int(Reason.TWO_PHASE_ACCEPTED)
 _NEAR_CRITICAL: Final = int(Reason.NEAR_CRITICAL)
 _INPUT_BAD: Final = int(Reason.INPUT_BAD)
 _UNKNOWN: Final = int(Region.UNKNOWN)
-_CRITICAL_AMPLIFICATION_MOST: Final = 1e3
+
+CRITICAL_AMPLIFICATION_MOST: Final = 1e3
+"""The most by which a flat isotherm makes the uncertainty of a density larger than stated."""
 
 
 class Answered(NamedTuple):
@@ -126,7 +128,7 @@ def ambient_flags(ambient: float | None, pressure: float) -> int:
 
 def _amplified(uncertainty: float, stiffness: float) -> float:
     """Return what a relative pressure uncertainty does to a density where the isotherm is nearly flat."""
-    least = 1.0 / _CRITICAL_AMPLIFICATION_MOST
+    least = 1.0 / CRITICAL_AMPLIFICATION_MOST
     return uncertainty / min(1.0, max(least, stiffness))
 
 
