@@ -28,12 +28,14 @@ BODY = "gasapi.body"
 ROUTE = "gasapi.route"
 """Key of the environ under which the rule of the route stands once it is known."""
 
-OPEN_PATHS = frozenset({"/", "/livez", "/readyz"})
-"""What is answered without a token: health, and the page for people, which asks for the token."""
+OPEN_PATHS = frozenset({"/", "/catalogue", "/interface", "/livez", "/readyz"})
+"""What is answered without a token: health, and the page for people with its papers, which asks for the token."""
+
+LONGEST_REMEMBERED = 8 * 1024
+"""Bytes of a body or a query up to which its answer is remembered."""
 
 _OPEN_PREFIX = "/assets/"
 _MEMO = "gasapi.memo"
-_LONGEST_KEY = 8 * 1024
 FAILURE = "the service failed to answer this question; its log tells why"
 """All that a caller is told of an exception that nobody foresaw."""
 
@@ -72,6 +74,7 @@ class Edge:
 
     :param tokens: those that are good, None where no token is asked for
     :param direct: what answers GET and POST by path, memo included, without the application
+    :param longest: bytes that a body may have at most to be read here
     :param log: where a line is written for each request, None where none is wanted
     """
 
@@ -83,6 +86,7 @@ class Edge:
         metrics: Metrics,
         log: RequestLog | None = None,
         direct: Mapping[str, Direct] | None = None,
+        longest: int = LONGEST_REMEMBERED,
     ) -> None:
         self._application = application
         self._tokens = tokens
@@ -90,6 +94,7 @@ class Edge:
         self._metrics = metrics
         self._log = log
         self._direct = direct or {}
+        self._longest = min(longest, LONGEST_REMEMBERED)
 
     def __call__(self, environ: Environ, start_response: StartResponse) -> Iterable[bytes]:
         """Answer a request."""
@@ -153,11 +158,11 @@ class Edge:
         body = b""
         if method == "POST":
             length = announced_length(environ)
-            if length is None or not 0 < length <= _LONGEST_KEY:
+            if length is None or not 0 < length <= self._longest:
                 return None
-            body = environ[BODY] = read_body(environ, _LONGEST_KEY)
+            body = environ[BODY] = read_body(environ, self._longest)
         query = environ["QUERY_STRING"]
-        if len(query) > _LONGEST_KEY:
+        if len(query) > LONGEST_REMEMBERED:
             return None
         # the encoding of the content counts as part of its type: either makes another request of the same bytes
         content = environ.get("CONTENT_TYPE", "") + "\n" + environ.get("HTTP_CONTENT_ENCODING", "")

@@ -65,6 +65,7 @@ class Parameter(NamedTuple):
     kind: Literal["number", "string", "boolean"]
     schema: JsonSchema
     open_ended: bool = False
+    required: bool = False
 
 
 class Member(Field[Any]):
@@ -126,7 +127,7 @@ class Member(Field[Any]):
 
         :param name: the member's name
         """
-        return [Parameter(name, (name,), self.kind, self.json_schema())]
+        return [Parameter(name, (name,), self.kind, self.json_schema(), required=self.required)]
 
     def words(self, key: str, **values: str) -> str:
         """Return the message of a key with values in it."""

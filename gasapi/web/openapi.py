@@ -386,6 +386,8 @@ def _parameters(form: QueryForm) -> list[dict[str, Any]]:
             schema = {"type": "object", "patternProperties": {pattern: schema}, "additionalProperties": False}
             entry |= {"style": "form", "explode": True}
             description = f"Any number of parameters {parameter.name}<name>."
+        if parameter.required:
+            entry["required"] = True
         entry["schema"] = schema
         if description:
             entry["description"] = description
