@@ -224,7 +224,7 @@ class Tolerance(Number):
     """A relative error that 32-bit arithmetic can keep."""
 
     default_error_messages: ErrorMessages = {  # noqa: RUF012
-        "range": "{value} is not {bound}: below 0.00001 the 7 digits of 32-bit arithmetic do not reach, above 0.1 a table is no use"
+        "range": "{value} is not {bound}: 32-bit arithmetic does not reach below 0.00001, and above 0.1 a table is no use"
     }
 
     def __init__(self, **kwargs: Any) -> None:
