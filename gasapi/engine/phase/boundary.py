@@ -28,7 +28,7 @@ _MOST_POINTS: Final = 120
 _NODES: Final = 72
 _TRIVIAL: Final = 0.02
 _BLIND: Final = 0.15
-_SAME: Final = 1e-3
+_SAME: Final = 0.15
 
 
 class NamedPoint(NamedTuple):
@@ -305,6 +305,8 @@ def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool
     points = system.solve(start, k, start[:, k])
     good = points.converged & (np.abs(points.unknown[:, k + 1] - start[:, k + 1]) < 0.03)
     good &= np.abs(points.unknown[:, :k]).max(axis=1) > _TRIVIAL
+    # a far side on which the feed comes under tension is cut off
+    good &= points.log_pressure > trace.log_pressure[0] - 1.0
     stretch = 1.0 + _WEIGHT * np.exp(start[:, k]) / scale
     temperature_slope = points.slope[:, k + 1] / stretch
     pressure_slope = points.pressure_slope / stretch
@@ -316,7 +318,7 @@ def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool
     therm = _turning(position, log_temperature, temperature_slope)
     bar = _turning(position, log_pressure, pressure_slope)
     if therm is not None and bar is not None and abs(therm - bar) < _SAME:
-        # a single component
+        # a single component, or nearly so: one node serves both
         therm = bar
     extremes = np.array(sorted({e for e in (therm, bar) if e is not None}))
     if extremes.size:

@@ -87,6 +87,12 @@ class BoundaryCurve:
         self.log_last = round(float(used[-1]), 10) if fall > 1 and not dew_only else math.inf
         self.last_temperature = -math.inf if dew_only else float(t[top + fall - 1])
 
+        # a bubble line that was left while its pressure rose may come back above at lower temperatures; without a critical
+        # point the far side is no bubble line, but where a second liquid appears
+        self.trusted_from = self.last_temperature if b.critical is not None else math.inf
+        if b.complete and b.critical is not None:
+            self.trusted_from = -math.inf
+
         hot = _node(b, b.cricondentherm, t)
         if _falling(t[: hot + 1][::-1]) != hot + 1:
             raise OddBoundary
@@ -122,7 +128,7 @@ class BoundaryCurve:
         :param lp: ln p
         """
         if lp > self.log_top:
-            return (_GAS if self.closed else DIRECT), math.nan, math.nan
+            return (_GAS if self.closed and t >= self.trusted_from else DIRECT), math.nan, math.nan
         if lp < self.log_first:
             if self.ends_with_equation:
                 return _GAS, math.nan, math.nan
@@ -135,7 +141,8 @@ class BoundaryCurve:
             return _GAS, up, math.nan
         low = self.by_pressure(w) if lp >= self.log_last else math.nan
         if low == low:
-            return (_LIQUID if t < low else _TWO_PHASE), up, low
+            beyond = _LIQUID if t >= self.trusted_from else DIRECT
+            return (beyond if t < low else _TWO_PHASE), up, low
         return (_TWO_PHASE if t >= self.last_temperature else DIRECT), up, low
 
     def state_block(self, t: Array, lp: Array) -> tuple[NDArray[np.int8], Array, Array]:
@@ -146,7 +153,9 @@ class BoundaryCurve:
         known = np.flatnonzero((lp >= self.log_last) & ~(t > up))
         low[known] = self.by_pressure(w.take(known))
         below = np.full(t.size, _TWO_PHASE, dtype=np.int8)
-        below[t < low] = _LIQUID
+        beyond = t < low
+        below[beyond] = DIRECT
+        below[beyond & (t >= self.trusted_from)] = _LIQUID
         before = lp < self.log_first
         below[(low != low) & ~before & ~(t >= self.last_temperature)] = DIRECT
         if before.any():
@@ -159,7 +168,9 @@ class BoundaryCurve:
         state = np.where(t > up, np.int8(_GAS), below)
         above = lp > self.log_top
         if above.any():
-            state[above] = _GAS if self.closed else DIRECT
+            state[above] = DIRECT
+            if self.closed:
+                state[above & (t >= self.trusted_from)] = _GAS
             up = np.where(above, np.nan, up)
             low = np.where(above, np.nan, low)
         return state, up, low

@@ -25,9 +25,8 @@ Floats = NDArray[np.float64]
 """An array of any shape."""
 
 # an isotherm is walked on these fractions of close packing before any root on it is believed
-_WALK = np.concatenate(
-    [(1e-7, 1e-4, 1e-3, 3e-3, 0.01, 0.02, 0.035, 0.055, 0.08, 0.11, 0.14, 0.17, 0.2, 0.23, 0.26), np.linspace(0.3, 1.0, 18)]
-)
+_THIN = (1e-7, 1e-4, 1e-3, 3e-3, 0.01, 0.02, 0.035, 0.055, 0.08, 0.11, 0.14, 0.17, 0.2, 0.23, 0.26)
+_WALK = np.concatenate([_THIN, np.linspace(0.3, 1.0, 18)])
 _STEPS = 60
 _DONE = 1e-13
 

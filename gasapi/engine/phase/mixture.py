@@ -111,14 +111,15 @@ def _worse(one: int, other: int) -> int:
     return int(_RANKED[max(_RANK[one], _RANK[other])])
 
 
-def _margin_temperature(t: float, region: int, dew: float, low: float) -> float:
+def _margin_temperature(t: float, region: int, dew: float, up: float, low: float) -> float:
     """Return the margin to the dew point, or to the nearer end of the two-phase range; NaN for none."""
     if region == _UNKNOWN:
         return math.nan
     margin = t - dew
     rise = t - low
-    if region == _LIQUID and rise == rise:
-        return rise
+    if region == _LIQUID:
+        # a liquid without a bubble line at this pressure has no margin to the gas
+        return rise if rise == rise else margin if up == up else math.nan
     if region == _TWO_PHASE and rise < -margin:
         # never above zero, though the curves meet only to their own accuracy
         return -rise if rise > 0.0 else 0.0
@@ -437,7 +438,7 @@ class MixturePhase:
             dew, kind, kelvin = water, 2, self.water_uncertainty.kelvin
         else:
             dew, kind = math.nan, 0
-        margin_t = _margin_temperature(t, region, dew, low)
+        margin_t = _margin_temperature(t, region, dew, up, low)
         margin_p = math.nan if direct or region == _UNKNOWN else self._margin_pressure(t, p, region, t < water)
         return MixtureVerdict(
             region,
@@ -647,7 +648,7 @@ class MixturePhase:
             if none.any():
                 kind[none] = 0
                 kelvin[none] = math.nan
-            margin_t = self._margin_temperature_block(t, region, dew, low)
+            margin_t = self._margin_temperature_block(t, region, dew, up, low)
             margin_p = self._margin_pressure_block(t, p, region, t < water)
             unknown = direct | (region == _UNKNOWN)
             if unknown.any():
@@ -662,15 +663,15 @@ class MixturePhase:
         return MixtureBlock(region, dew, kind, margin_t, margin_p, kelvin, flags)
 
     @staticmethod
-    def _margin_temperature_block(t: Array, region: NDArray[np.int8], dew: Array, low: Array) -> Array:
+    def _margin_temperature_block(t: Array, region: NDArray[np.int8], dew: Array, up: Array, low: Array) -> Array:
         margin = t - dew
         rows = np.flatnonzero((region == _LIQUID) | (region == _TWO_PHASE))
         if rows.size:
             rise = t.take(rows) - low.take(rows)
-            here = margin.take(rows)
-            nearer = np.where(region.take(rows) == _LIQUID, rise == rise, rise < -here)
-            inner = np.where(rise > 0.0, -rise, 0.0)
-            margin[rows] = np.where(nearer, np.where(region.take(rows) == _LIQUID, rise, inner), here)
+            here, above = margin.take(rows), up.take(rows)
+            in_liquid = np.where(rise == rise, rise, np.where(above == above, here, math.nan))
+            between = np.where(rise < -here, np.where(rise > 0.0, -rise, 0.0), here)
+            margin[rows] = np.where(region.take(rows) == _LIQUID, in_liquid, between)
         margin[region == _UNKNOWN] = math.nan
         return margin
 

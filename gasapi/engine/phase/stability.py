@@ -36,6 +36,7 @@ _HEAVY: Final = 0.75
 """Components with a critical temperature above this part of the state's get a liquid trial of their own."""
 
 _MOST_TRIALS: Final = 12
+_ASIDE: Final = (0.1, 0.5)
 
 
 class Stability(IntEnum):
@@ -121,6 +122,33 @@ class StabilityTest:
             trials.append((Branch.LIQUID, self._aqueous, pure))
         return trials
 
+    def _beside_the_feed(self, temperature: float, density: float) -> list[tuple[Branch, NDArray[np.bool_], Floats]]:
+        """Return trials on either side of the feed along its softest direction, for states near a critical point.
+
+        The direction is the eigenvector of the smallest eigenvalue of sqrt(z_i z_j) d ln f_i/d n_j.
+        """
+        z = self.fractions
+        d = self.energy.derivatives(np.array([temperature]), density * z[None])
+        hessian = d.hessian[0]
+        summed = 1.0 + hessian @ z
+        # at constant pressure the volume gives way
+        hessian = hessian - np.outer(summed, summed) / float(z @ summed)
+        root = np.sqrt(z)
+        matrix = root[:, None] * hessian * root + np.eye(z.size)
+        if not np.isfinite(matrix).all():
+            return []
+        _, vectors = np.linalg.eigh(matrix)
+        direction = vectors[:, 0] / root
+        direction /= np.abs(direction).max()
+        heavier = float(direction @ (z * self.energy.critical_temperatures)) > 0.0
+        mask = self._hydrocarbon
+        trials = []
+        for sign, branch in ((1.0, Branch.LIQUID), (-1.0, Branch.GAS)):
+            for size in _ASIDE:
+                w = z * np.exp((sign if heavier else -sign) * size * direction)
+                trials.append((branch, mask, np.where(mask, w, 0.0)))
+        return trials
+
     def at(self, temperature: float, pressure: float) -> StabilityResult:
         """Return the verdict on one state.
 
@@ -132,7 +160,7 @@ class StabilityTest:
             if feed is None:
                 return StabilityResult(Stability.UNKNOWN, 0.0, self.fractions, np.nan, np.nan)
             log_f, feed_density = feed
-            trials = self._trials(temperature, pressure)
+            trials = self._trials(temperature, pressure) + self._beside_the_feed(temperature, feed_density)
             worst = StabilityResult(Stability.STABLE, 0.0, self.fractions, feed_density, feed_density)
             if self._liquid_water is not None and temperature < COLD:
                 # below the equation's own liquid water there is no root for the aqueous trial
