@@ -44,6 +44,8 @@ _RESIDUAL: Final = 2.3e-16
 _STEP: Final = 1e-6
 # so near theta_c the turning points differ in pressure by less than its rounding, so that there is one branch
 _CRITICAL_MARGIN: Final = 1.0 + 1e-14
+# beyond it the cubes overflow; NaN fails the same test
+_LARGEST: Final = 1e100
 _THIRD: Final = 1.0 / 3.0
 
 
@@ -85,7 +87,7 @@ class CubicRoots:
         :param b: b p/(R T), not negative, [-]
         :param branch: which end of the isotherm
         """
-        if not math.isfinite(theta + b):
+        if not theta + b <= _LARGEST:
             return Packing(math.nan, Status.NOT_CONVERGED)
         u = self._u
         w = self._w
@@ -170,9 +172,9 @@ class CubicRoots:
             eta[rows], done[rows] = _from_below_block(e2[rows], e1[rows], e0[rows], b[rows], ceiling[rows])
 
         status = np.where(~one_sided & ((eta > self._critical_packing) == from_gas), Status.NO_ROOT, Status.CONVERGED)
-        finite = np.isfinite(theta + b)
-        status = np.where(done & finite, status, Status.NOT_CONVERGED)
-        return PackingBlock(np.where(finite, eta, math.nan), status.astype(np.int8))
+        sensible = theta + b <= _LARGEST
+        status = np.where(done & sensible, status, Status.NOT_CONVERGED)
+        return PackingBlock(np.where(sensible, eta, math.nan), status.astype(np.int8))
 
 
 def _from_above(e2: float, c1: float, c0: float, b: float, inflection: float, spread: float) -> tuple[float, bool]:

@@ -25,6 +25,7 @@ from gasapi.engine.estimate import DensityEstimate
 from gasapi.engine.protocol import Branch, Status
 
 __all__ = [
+    "REDUCED_TEMPERATURE_MAX",
     "REDUCED_TEMPERATURE_MIN",
     "BwrConstants",
     "Isotherm",
@@ -38,8 +39,13 @@ __all__ = [
 REDUCED_TEMPERATURE_MIN: Final = 0.2
 """T_r below which no density is given; the authors stop at 0.3."""
 
+REDUCED_TEMPERATURE_MAX: Final = 1e6
+"""T_r above which no density is given; the authors stop at 4, and what is above is an ideal gas of hard cores."""
+
 # F at this density exceeds a reduced pressure of 6e4 T_r
 _DENSITY_MAX: Final = 40.0
+# a lower p_r is taken as this one, at which a gas is as ideal as it can be
+_PRESSURE_MIN: Final = 1e-250
 _MAX_STEPS: Final = 80
 _RESIDUAL: Final = 4.0e-16
 _STEP: Final = 1e-9
@@ -100,17 +106,17 @@ def terms(isotherm: Isotherm[Real], density: Real) -> tuple[Real, Real, Real, Re
     x2 = x * x
     g = gamma * x2
     x5 = d * (x2 * x2 * x)
-    decay = e * x2 * exp(-g)
+    ex = e * x * exp(-g)
+    decay = ex * x
     bx = b * x
     cx2 = c * x2
     q = 3.0 * beta + g * (5.0 - 2.0 * beta - 2.0 * g)
     tail = decay * (beta + g)
     f = x * (1.0 + bx + cx2 + x5 + tail)
     f1 = 1.0 + 2.0 * bx + 3.0 * cx2 + 6.0 * x5 + decay * q
-    # 1/x times this is F''/2
-    f2 = bx + 3.0 * cx2 + 15.0 * x5 + decay * (q * (1.0 - g) + g * (5.0 - 2.0 * beta - 4.0 * g))
+    half = b + 3.0 * (c * x) + 15.0 * (d * (x2 * x2)) + ex * (q * (1.0 - g) + g * (5.0 - 2.0 * beta - 4.0 * g))
     size = x * (1.0 + abs(bx) + abs(cx2) + x5 + tail)
-    return f, f1, f2 / x, size
+    return f, f1, half, size
 
 
 def select_rows(isotherm: Isotherm[Array], mask: NDArray[np.bool_]) -> Isotherm[Array]:
@@ -274,6 +280,7 @@ class ReducedFluid:
         :param branch: which end of the isotherm
         """
         end = self.branch_end(temperature, branch)
+        pressure = _PRESSURE_MIN if pressure < _PRESSURE_MIN else pressure
         target = pressure / temperature
         low, high = 0.0, _DENSITY_MAX
         if end is None:
@@ -295,6 +302,7 @@ class ReducedFluid:
         :param branch: one branch for all rows
         """
         below = self.has_loop(temperature)
+        pressure = np.maximum(pressure, _PRESSURE_MIN)
         low = np.zeros_like(temperature)
         high = np.full_like(temperature, _DENSITY_MAX)
         limit = high.copy()

@@ -235,9 +235,10 @@ class CubicFluid(Fluid):
         ts, ps = cast(Array, temperature), cast(Array, pressure)
         density = np.empty(ts.shape)
         statuses = np.empty(ts.shape, dtype=np.int8)
-        for start in range(0, ts.size, _BLOCK_ROWS):
-            part = slice(start, start + _BLOCK_ROWS)
-            density[part], statuses[part] = self._density_block(ts[part], ps[part], branch)
+        with np.errstate(all="ignore"):
+            for start in range(0, ts.size, _BLOCK_ROWS):
+                part = slice(start, start + _BLOCK_ROWS)
+                density[part], statuses[part] = self._density_block(ts[part], ps[part], branch)
         return cast("Root[Real]", Root(density, statuses))
 
     def _density_block(self, temperature: Array, pressure: Array, branch: Branch) -> tuple[Array, NDArray[np.int8]]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 from typing import cast
 
@@ -35,8 +36,9 @@ class IdealGas(Fluid):
         """Return p/(R T), mol/m3; see ``Fluid.density``. The isotherm has one root, which both branches return."""
         density = pressure / (GAS_CONSTANT * temperature)
         if type(temperature) is float:
-            return Root(density, Status.CONVERGED)
-        return Root(density, np.full(cast(Array, density).shape, Status.CONVERGED, dtype=np.int8))
+            return Root(density, Status.CONVERGED if math.isfinite(cast(float, density)) else Status.NOT_CONVERGED)
+        status = np.where(np.isfinite(cast(Array, density)), Status.CONVERGED, Status.NOT_CONVERGED)
+        return Root(density, status.astype(np.int8))
 
     def pressure(self, temperature: Real, density: Real) -> PressureDerivatives[Real]:
         """Return pressure and its derivatives; see ``Fluid.pressure``."""

@@ -35,7 +35,14 @@ from numpy.typing import NDArray
 from gasapi.engine.elementary import Array, Real, exp, log
 from gasapi.engine.models.cubic import GAS_CONSTANT, refusal
 from gasapi.engine.protocol import Branch, CriticalPoint, Fluid, PressureDerivatives, Root, Status
-from gasapi.engine.reduced_bwr import REDUCED_TEMPERATURE_MIN, BwrConstants, ReducedFluid, select_rows, terms
+from gasapi.engine.reduced_bwr import (
+    REDUCED_TEMPERATURE_MAX,
+    REDUCED_TEMPERATURE_MIN,
+    BwrConstants,
+    ReducedFluid,
+    select_rows,
+    terms,
+)
 from gasapi.gases.records import CubicPair, Limits, Substance
 
 __all__ = [
@@ -99,7 +106,8 @@ _MAX_STEPS: Final = 30
 _MATCH: Final = 1e-9
 _VOLUME: Final = 1e-14
 _RESOLUTION: Final = 1e-15
-_PRESSURE_MAX: Final = 6e4
+# of p_r/T_r, reached at a reduced density of about 40
+_PRESSURE_MAX: Final = 5e4
 _PRESSURE_MIN: Final = 1e-14
 _MAX_SEARCH_STEPS: Final = 200
 _CRITICAL_REGION: Final = 0.99
@@ -215,7 +223,8 @@ class LeeKesler(Fluid):
             self.critical = CriticalPoint(self._tc, self._pc, density)
 
     def density(self, temperature: Real, pressure: Real, branch: Branch) -> Root[Real]:
-        """Return the density root of a branch; see ``Fluid.density``. Below T_r = 0.2 it is not applicable."""
+        """Return the density root of a branch; see ``Fluid.density``. Outside T_r from 0.2 to 1e6, and beyond p_r = 5e4 T_r, it
+        is not applicable."""
         if type(temperature) is float:
             return cast("Root[Real]", self._density_float(temperature, cast(float, pressure), branch))
         ts, ps = cast(Array, temperature), cast(Array, pressure)
@@ -229,7 +238,7 @@ class LeeKesler(Fluid):
 
     def _density_float(self, temperature: float, pressure: float, branch: Branch) -> Root[float]:
         t, p = temperature / self._tc, pressure / self._pc
-        if t < REDUCED_TEMPERATURE_MIN:
+        if not (REDUCED_TEMPERATURE_MIN <= t <= REDUCED_TEMPERATURE_MAX and p <= _PRESSURE_MAX * t):
             return Root(_NAN, Status.NOT_APPLICABLE)
         simple = self._simple.root(t, p, branch)
         if simple.status != Status.CONVERGED:
@@ -250,8 +259,8 @@ class LeeKesler(Fluid):
 
     def _density_block(self, temperature: Array, pressure: Array, branch: Branch) -> tuple[Array, NDArray[np.int8]]:
         t, p = temperature / self._tc, pressure / self._pc
-        cold = t < REDUCED_TEMPERATURE_MIN
-        t = np.maximum(t, REDUCED_TEMPERATURE_MIN)
+        outside = ~((t >= REDUCED_TEMPERATURE_MIN) & (t <= REDUCED_TEMPERATURE_MAX) & (p <= _PRESSURE_MAX * t))
+        t, p = np.where(outside, 1.0, t), np.where(outside, 1.0, p)
         x0, slope0, status0 = self._simple.roots(t, p, branch)
         xr, sloper, statusr = self._reference.roots(t, p, branch)
         h = self._h
@@ -261,7 +270,7 @@ class LeeKesler(Fluid):
         softness = (1.0 - h) / slope0 + h * (ratio * ratio) / sloper
         status = np.where(status0 != Status.CONVERGED, status0, statusr)
         unstable = ~((volume > 0.0) & (softness > 0.0)) & (status == Status.CONVERGED)
-        status[cold | unstable] = Status.NOT_APPLICABLE
+        status[outside | unstable] = Status.NOT_APPLICABLE
         return np.where(status == Status.CONVERGED, self._unit * x0 / volume, _NAN), status.astype(np.int8)
 
     def pressure(self, temperature: Real, density: Real) -> PressureDerivatives[Real]:

@@ -324,25 +324,35 @@ class Virial(Fluid):
 
         Below the (mole-averaged) critical temperature there is no liquid root.
         """
+        if type(temperature) is not float:
+            # what overflows is not applicable
+            with np.errstate(all="ignore"):
+                return cast("Root[Real]", self._density_block(cast(Array, temperature), cast(Array, pressure), branch))
+        return cast("Root[Real]", self._density_float(temperature, cast(float, pressure), branch))
+
+    def _density_float(self, temperature: float, pressure: float, branch: Branch) -> Root[float]:
+        if branch == Branch.LIQUID and temperature < self._critical_temperature:
+            return Root(math.nan, Status.NO_ROOT)
         b, _ = self.second_virial_coefficient(temperature)
         rt = GAS_CONSTANT * temperature
         departure = b * pressure / rt
-        if type(temperature) is float:
-            if branch == Branch.LIQUID and temperature < self._critical_temperature:
-                return Root(cast(Real, math.nan), Status.NO_ROOT)
-            if not -DEPARTURE_LIMIT <= departure <= DEPARTURE_LIMIT:
-                return Root(cast(Real, math.nan), Status.NOT_APPLICABLE)
-            density = pressure / (rt * (1.0 + departure))
-            return Root(density, Status.CONVERGED if density <= self._density_max else Status.NOT_APPLICABLE)
-        y, t, p, kt = cast(Array, departure), cast(Array, temperature), cast(Array, pressure), cast(Array, rt)
-        near = (y >= -DEPARTURE_LIMIT) & (y <= DEPARTURE_LIMIT)
-        rho = np.where(near, p / (kt * (1.0 + np.where(near, y, 0.0))), math.nan)
-        status = np.where(rho <= self._density_max, Status.CONVERGED, Status.NOT_APPLICABLE)
+        if not -DEPARTURE_LIMIT <= departure <= DEPARTURE_LIMIT:
+            return Root(math.nan, Status.NOT_APPLICABLE)
+        density = pressure / (rt * (1.0 + departure))
+        return Root(density, Status.CONVERGED if density <= self._density_max else Status.NOT_APPLICABLE)
+
+    def _density_block(self, temperature: Array, pressure: Array, branch: Branch) -> Root[Array]:
+        b, _ = self.second_virial_coefficient(temperature)
+        rt = GAS_CONSTANT * temperature
+        departure = b * pressure / rt
+        near = (departure >= -DEPARTURE_LIMIT) & (departure <= DEPARTURE_LIMIT)
+        density = np.where(near, pressure / (rt * (1.0 + departure)), math.nan)
+        status = np.where(density <= self._density_max, Status.CONVERGED, Status.NOT_APPLICABLE)
         if branch == Branch.LIQUID:
-            none = t < self._critical_temperature
+            none = temperature < self._critical_temperature
             status[none] = Status.NO_ROOT
-            rho[none] = math.nan
-        return cast("Root[Real]", Root(rho, status.astype(np.int8)))
+            density[none] = math.nan
+        return Root(density, status.astype(np.int8))
 
     def pressure(self, temperature: Real, density: Real) -> PressureDerivatives[Real]:
         """Return pressure and its derivatives; see ``Fluid.pressure``. B rho must be below 1."""

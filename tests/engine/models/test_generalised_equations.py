@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 import pytest
 from generalised import COMPOSITIONS, MODELS, fluid, scale, states, substances
@@ -152,3 +154,23 @@ def test_every_equation_says_where_it_comes_from(model):
     assert module.NAME
     assert any(character.isdigit() for character in module.SOURCE)
     assert module.serves(substances("nitrogen", "methane")) is None
+
+
+@SOLVED
+@pytest.mark.parametrize("branch", list(Branch))
+def test_absurd_states_get_a_verdict_and_no_exception(model, composition, branch):
+    """From 1e-6 K and 0 Pa to 1e12 K and 1e300 Pa, and for NaN, the same verdict alone and in a block; NaN is never solved."""
+    equation = fluid(model, composition)
+    temperatures = (1e-6, 1e-3, 1.0, 10.0, 300.0, 3000.0, 1e6, 1e12, math.nan)
+    pressures = (0.0, 5e-324, 1e-200, 1e-30, 1.0, 1e5, 1e10, 1e15, 1e300, math.nan)
+    t, p = (np.array(values) for values in zip(*[(t, p) for t in temperatures for p in pressures], strict=True))
+    block = equation.density(t, p, branch)
+    for row in range(t.size):
+        single = equation.density(float(t[row]), float(p[row]), branch)
+        assert single.status == block.status[row]
+        if single.status == Status.CONVERGED:
+            assert single.density == block.density[row]
+            assert 0.0 <= single.density < math.inf
+            assert not math.isnan(t[row] + p[row])
+        if p[row] <= 1e15:
+            assert single.status != Status.NOT_CONVERGED or math.isnan(t[row])
