@@ -75,7 +75,7 @@ def create_app(settings: Settings | None = None, context: Context | None = None)
     app.register_error_handler(Exception, _failure_answer)
     log = RequestLog(sys.stdout.fileno()) if settings.request_log else None
     memo = Memo(settings.memo_entries, settings.memo_bytes)
-    app.wsgi_app = Edge(app.wsgi_app, tokens, memo, metrics, log, {PATH: answer})  # type: ignore[method-assign]
+    app.wsgi_app = Edge(app.wsgi_app, tokens, memo, metrics, log, {PATH: answer}, settings.json_limit)  # type: ignore[method-assign]
     return app
 
 
