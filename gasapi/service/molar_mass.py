@@ -238,8 +238,8 @@ def _words(candidates: tuple[Candidate, ...], is_ideal: bool) -> tuple[list[Phas
     elif toxic:
         names = ", ".join(c.name for c in toxic[:_MOST_NAMED]) + (", ..." if len(toxic) > _MOST_NAMED else "")
         counted = (
-            f"{len(toxic)} of the {len(candidates)} candidates are toxic ({names}): "
-            "count these first, and treat the gas as toxic until an analysis has ruled them out."
+            f"Toxic candidates: {len(toxic)} of {len(candidates)} ({names}). "
+            "Count these first, and treat the gas as toxic until an analysis has ruled them out."
         )
     else:
         counted = (

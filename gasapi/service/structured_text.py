@@ -18,7 +18,18 @@ import numpy as np
 from gasapi.service.bilinear import Float32
 from gasapi.service.lookup_table import LookupTable
 
-__all__ = ["BAD_INPUT", "CLAMPED", "IN_RANGE", "BlockText", "block_name", "function_block", "real"]
+__all__ = ["BAD_INPUT", "CLAMPED", "IN_RANGE", "RESERVED", "BlockText", "block_name", "function_block", "real"]
+
+_RESERVED = """
+    array at begin bool by byte case constant date dint do dword else elsif end exit false fb finally for from function
+    function_block if int lint lreal lword mod not of on or output pressure pressures program real repeat resource
+    retain return sint status string struct table_values temperature temperatures then time to tod true type udint uint
+    ulint until usint var var_input var_output while with word wstring xor and density compressibility_factor
+    molar_volume i j k p t u v low high abs add cal div eq exp ge gt le ld ln log lt max min mul ne r s sel sin cos tan
+    sqrt st sub
+"""
+RESERVED: Final = frozenset(_RESERVED.split())
+"""Words that may not name a function block, in lower case: keywords of the standard, and the names inside the block."""
 
 IN_RANGE: Final = 0
 CLAMPED: Final = 1
@@ -131,8 +142,8 @@ def _header(table: LookupTable, text: BlockText) -> list[str]:
         f"Pressure {real(grid.pressure[0])} to {real(grid.pressure[-1])} {p_unit}"
         + (f" at an ambient pressure of {text.ambient_pressure:.9g} Pa" if text.ambient_pressure is not None else "")
         + f", temperature {real(grid.temperature[0])} to {real(grid.temperature[-1])} {t_unit}",
-        f"Grid {grid.pressure.size} x {grid.temperature.size}, {table.bytes} bytes of REAL. Bilinear interpolation differs from "
-        f"the equation by at most {100.0 * table.max_relative_error:.4g} % in 32-bit arithmetic; the equation's own uncertainty"
+        f"Grid {grid.pressure.size} x {grid.temperature.size}, {table.bytes} bytes of REAL. Bilinear interpolation "
+        f"differs from the equation by at most {100.0 * table.max_relative_error:.4g} % in 32-bit arithmetic; the equation's own uncertainty"
         + (" is not known." if text.uncertainty is None else f" is {100.0 * text.uncertainty:.3g} % (k = 2) and comes on top."),
         "Outside the range the inputs are held at its ends, and status says so: the value is then not that of the gas.",
         "The gas and its composition are taken as they were asked; the block cannot know when they change.",

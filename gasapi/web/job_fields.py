@@ -10,6 +10,7 @@ from marshmallow import ValidationError
 from marshmallow import missing as missing_value
 from marshmallow.types import ErrorMessages
 
+from gasapi.service.structured_text import RESERVED
 from gasapi.units import UnknownUnit, unit
 from gasapi.web import fields
 from gasapi.web.fields import JsonSchema, Member, Messages, Number, Text
@@ -298,11 +299,16 @@ class Identifier(Member):
         f"an identifier of IEC 61131-3: 1 to {_LONGEST_IDENTIFIER} of A-Z, a-z, 0-9 and _, "
         "a letter first, no two underscores in a row and none at the end"
     )
+    default_error_messages: ErrorMessages = {  # noqa: RUF012
+        "reserved": "{value} is a keyword, or names something inside the block; give another name"
+    }
     pattern: ClassVar[str] = r"^[A-Za-z](_?[A-Za-z0-9])*$"
 
     def _read(self, value: Any) -> str:
         """Return the name."""
         if type(value) is str and len(value) <= _LONGEST_IDENTIFIER and re.fullmatch(self.pattern, value):
+            if value.lower() in RESERVED:
+                raise self.make_error("reserved", value=shown(value))
             return value
         self.refuse(value)
 

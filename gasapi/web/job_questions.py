@@ -12,11 +12,17 @@ from gasapi.errors import GasapiError
 from gasapi.service.flow import FlowQuestion
 from gasapi.service.flow import Meter as FlowMeter
 from gasapi.service.fraction_from_density import DensityUncertainties, FractionFromDensityQuestion, SameGas
+from gasapi.service.lookup_table import (
+    LookupTableQuestion,
+    RangeNotOnePhase,
+    RangeTooNarrow,
+    ToleranceTooSmall,
+)
 from gasapi.service.molar_mass import MolarMassQuestion
 from gasapi.service.pressure_decay import Correlation, LeakLimit, PressureDecayQuestion
 from gasapi.service.questions import GasSpec, InputUncertainty, StateQuestion
 from gasapi.service.vessel import DrawOff, VesselQuestion
-from gasapi.units import UnitMap, unit, unit_map
+from gasapi.units import SI_UNITS, UnitMap, unit, unit_map
 from gasapi.web import job_schemas
 from gasapi.web.job_fields import Measured
 from gasapi.web.json_body import parse_json
@@ -29,6 +35,8 @@ __all__ = [
     "FlowReader",
     "FractionFromDensityReader",
     "JobReader",
+    "LookupTableAsked",
+    "LookupTableReader",
     "MolarMassReader",
     "PressureDecayReader",
     "Readings",
@@ -82,11 +90,11 @@ class Readings:
     def pressure(self, *path: str, own_ambient: float | None = None) -> tuple[float, float | None]:
         """Return an absolute pressure, Pa, and the ambient that was assumed for it; 0 where it is missing."""
         ambient, assumed = self.ambient(own_ambient)
-        return self._absolute(path, "pressure", "Pa", ambient), assumed
+        return self._absolute(path, "pressure", ambient), assumed
 
     def temperature(self, *path: str) -> float:
         """Return an absolute temperature, K; 0 where it is missing."""
-        return self._absolute(path, "temperature", "K", 0.0)
+        return self._absolute(path, "temperature", 0.0)
 
     def pair(self, *path: str) -> tuple[float, float, float | None]:
         """Return pressure (Pa), temperature (K) and the assumed ambient (Pa) of an object of readings."""
@@ -105,6 +113,14 @@ class Readings:
             self.wrong.append((path, "this leaves the range of a double when it is converted to SI units"))
         return value
 
+    def end(self, quantity: str, place: int) -> float:
+        """Return an end of a range of pressures or temperatures in SI, 0 where it is missing."""
+        ends = self.get(quantity)
+        if ends is None:
+            return 0.0
+        ambient = self.ambient()[0] if quantity == "pressure" else 0.0
+        return self._above_zero((quantity, place), quantity, ends[place], ambient)
+
     def measured(self, measured: Measured, path: tuple[str, ...]) -> float:
         """Return a value with its own unit in SI."""
         own = unit(measured.quantity, measured.unit) if measured.unit is not None else self.units[measured.quantity]
@@ -120,7 +136,10 @@ class Readings:
 
     def state(self, *path: str, gas: GasSpec | None = None) -> StateQuestion:
         """Return the question about one state of the job."""
-        pressure, temperature, assumed = self.pair(*path)
+        return self.state_at(*self.pair(*path), gas=gas)
+
+    def state_at(self, pressure: float, temperature: float, assumed: float | None, gas: GasSpec | None = None) -> StateQuestion:
+        """Return the question about a state: Pa, K, and the ambient that was assumed for a gauge reading, Pa."""
         spec = gas if gas is not None else self.loaded.get("gas")
         substances = self.loaded.get("substances")
         if spec is None:
@@ -137,11 +156,12 @@ class Readings:
             self.loaded.get("accuracy"),
         )
 
-    def _absolute(self, path: tuple[str, ...], quantity: str, si: str, ambient: float) -> float:
+    def _absolute(self, path: tuple[str, ...], quantity: str, ambient: float) -> float:
         value = self.get(*path)
-        if value is None:
-            return 0.0
-        own = self.units[quantity]
+        return 0.0 if value is None else self._above_zero(path, quantity, value, ambient)
+
+    def _above_zero(self, path: Path, quantity: str, value: float, ambient: float) -> float:
+        own, si = self.units[quantity], SI_UNITS[quantity].name
         absolute: float = own.to_si(value, ambient)
         if not 0.0 < absolute < float("inf"):
             at_ambient = f" at an ambient of {ambient:g} Pa" if own.gauge else ""
@@ -427,5 +447,59 @@ class MolarMassReader(JobReader[MolarMassQuestion]):
         def find(error: GasapiError) -> Path:
             path = path_of(error, mixture=mixture)
             return ("like", *path[1:]) if path[:1] == ("gas",) else path
+
+        return find
+
+
+class LookupTableAsked(NamedTuple):
+    """The question of a table, the form that it is wanted in, and the name that its function block is to have, if any."""
+
+    question: LookupTableQuestion
+    form: str
+    name: str | None
+
+
+class LookupTableReader(JobReader[LookupTableAsked]):
+    """Reads questions for tables."""
+
+    schema = job_schemas.LookupTableSchema()
+
+    def check(self, readings: Readings) -> None:
+        """Convert the ends of both ranges."""
+        for place in (0, 1):
+            readings.end("pressure", place)
+            readings.end("temperature", place)
+
+    def question(self, readings: Readings) -> LookupTableAsked:
+        """Return the table."""
+        ambient, assumed = readings.ambient()
+        units = readings.units
+        of_property = readings.get("property")
+        low, high = (readings.end("pressure", place) for place in (0, 1))
+        cold, warm = (readings.end("temperature", place) for place in (0, 1))
+        state = readings.state_at(0.5 * (low + high), 0.5 * (cold + warm), assumed)
+        question = LookupTableQuestion(
+            state,
+            readings.get("pressure"),
+            readings.get("temperature"),
+            units.pressure,
+            units.temperature,
+            None if of_property == "compressibility_factor" else units[of_property],
+            ambient,
+            of_property,
+            readings.get("tolerance"),
+        )
+        return LookupTableAsked(question, readings.get("format"), readings.get("name"))
+
+    def locator(self, readings: Readings) -> Callable[[GasapiError], Path]:
+        """Return where in the request an exception of the service is at home."""
+        find_other = super().locator(readings)
+
+        def find(error: GasapiError) -> Path:
+            if isinstance(error, RangeTooNarrow):
+                return (error.quantity,)
+            if isinstance(error, ToleranceTooSmall):
+                return ("tolerance",)
+            return ("pressure",) if isinstance(error, RangeNotOnePhase) else find_other(error)
 
         return find
