@@ -21,7 +21,10 @@ from gasapi.web.problems import Problem
 from gasapi.web.representations import OrjsonProvider
 from gasapi.web.request_log import RequestLog
 from gasapi.web.routes.catalogue import catalogue_routes
+from gasapi.web.routes.jobs import job_routes
+from gasapi.web.routes.lookup_table import lookup_table_routes
 from gasapi.web.routes.operations import operation_routes
+from gasapi.web.routes.page import page_routes
 from gasapi.web.routes.state import PATH, state_answerer, state_routes
 from gasapi.web.tokens import TokenList
 
@@ -67,7 +70,9 @@ def create_app(settings: Settings | None = None, context: Context | None = None)
     # an address with a doubled slash is another address, not a redirection
     app.url_map.merge_slashes = False
     answer = state_answerer(parts)
-    for routes in (state_routes(answer), catalogue_routes(parts), operation_routes(parts)):
+    for routes in (state_routes(answer), catalogue_routes(parts), operation_routes(parts), page_routes(parts)):
+        app.register_blueprint(routes)
+    for routes in (job_routes(parts), lookup_table_routes(parts)):
         app.register_blueprint(routes)
     app.before_request(_note_route)
     app.register_error_handler(Problem, _problem_answer)

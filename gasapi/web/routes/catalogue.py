@@ -20,7 +20,7 @@ from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, Problem, invalid, pointer
 from gasapi.web.query import parameter_pairs
 
-__all__ = ["catalogue_routes"]
+__all__ = ["catalogue_routes", "gas_entry", "gas_summary", "model_entry"]
 
 _FORMS = (JSON,)
 _LONGEST_SEARCH = 200
@@ -30,7 +30,7 @@ def catalogue_routes(parts: Parts) -> Blueprint:
     """Return the routes of the catalogue."""
     routes = Blueprint("catalogue", __name__)
     context = parts.context
-    models = orjson.dumps({"models": [_model(id, context) for id in MODEL_IDS]})
+    models = orjson.dumps({"models": [model_entry(id, context) for id in MODEL_IDS]})
     units = orjson.dumps({"quantities": {quantity: _quantity(quantity) for quantity in QUANTITIES}})
     conditions = orjson.dumps({"reference_conditions": {id: c._asdict() for id, c in REFERENCE_CONDITIONS.items()}})
 
@@ -40,7 +40,7 @@ def catalogue_routes(parts: Parts) -> Blueprint:
         if len(search) > _LONGEST_SEARCH:
             raise invalid([Fault("/search", f"a search has at most {_LONGEST_SEARCH} characters")])
         found = context.catalogue.search(search)
-        return _json(orjson.dumps({"gases": [_summary(gas, context) for gas in found]}))
+        return _json(orjson.dumps({"gases": [gas_summary(gas, context) for gas in found]}))
 
     @routes.get("/v1/gases/<name>")
     def get_gas(name: str) -> Response:
@@ -49,7 +49,7 @@ def catalogue_routes(parts: Parts) -> Blueprint:
             gas = context.catalogue.find(name[: 2 * _LONGEST_SEARCH])
         except UnknownGas as error:
             raise Problem(404, str(error)) from None
-        return _json(orjson.dumps(_entry(gas, context)))
+        return _json(orjson.dumps(gas_entry(gas, context)))
 
     @routes.get("/v1/models")
     def get_models() -> Response:
@@ -88,7 +88,8 @@ def _parameters(*known: str) -> dict[str, str]:
     return dict(pairs)
 
 
-def _summary(gas: Gas, context: Context) -> dict[str, Any]:
+def gas_summary(gas: Gas, context: Context) -> dict[str, Any]:
+    """Return what a list of gases says of one."""
     return {
         "id": gas.id,
         "name": gas.name,
@@ -100,11 +101,12 @@ def _summary(gas: Gas, context: Context) -> dict[str, Any]:
     }
 
 
-def _entry(gas: Gas, context: Context) -> dict[str, Any]:
+def gas_entry(gas: Gas, context: Context) -> dict[str, Any]:
+    """Return all that is known of a gas: constants with their sources, hazards, the models that can serve it."""
     hazard = gas.hazard
     components = context.catalogue.components(gas)
     return {
-        **_summary(gas, context),
+        **gas_summary(gas, context),
         "description": gas.description,
         "fractions": dict(components),
         **{name: _constant(constant) for name, constant in gas.constants},
@@ -131,7 +133,8 @@ def _models_of(gas: Gas, context: Context) -> list[dict[str, Any]]:
     return found
 
 
-def _model(id: str, context: Context) -> dict[str, Any]:
+def model_entry(id: str, context: Context) -> dict[str, Any]:
+    """Return an equation of state with its source and range."""
     if id == reference.ID:
         gases = [gas.id for gas in context.catalogue.gases if context.catalogue.reference_id(gas.id) is not None]
         return {

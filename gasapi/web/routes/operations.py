@@ -1,4 +1,4 @@
-"""Health, counters, the OpenAPI document and the page for people."""
+"""Health, counters and the OpenAPI document."""
 
 from __future__ import annotations
 
@@ -19,7 +19,6 @@ def operation_routes(parts: Parts) -> Blueprint:
     """Return the routes of operation."""
     routes = Blueprint("operations", __name__)
     document = files("gasapi.web").joinpath("openapi.json").read_bytes()
-    page = files("gasapi.web").joinpath("page", "index.html").read_bytes()
     ready = orjson.dumps({"status": "ready", "version": __version__, "data": parts.context.data})
 
     @routes.get("/openapi.json")
@@ -38,13 +37,5 @@ def operation_routes(parts: Parts) -> Blueprint:
     @routes.get("/metrics")
     def get_metrics() -> Response:
         return Response(parts.metrics.exposition(), content_type=CONTENT_TYPE)
-
-    @routes.get("/")
-    def get_page() -> Response:
-        headers = {
-            "Content-Security-Policy": "default-src 'none'; style-src 'unsafe-inline'",
-            "X-Content-Type-Options": "nosniff",
-        }
-        return Response(page, content_type="text/html; charset=utf-8", headers=headers)
 
     return routes
