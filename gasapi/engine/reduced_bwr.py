@@ -5,7 +5,7 @@ With d = 1/V_r = rho R Tc/pc, t = 1/T_r and g = gamma d^2,
     F(d) = p_r/T_r = d Z,    Z = 1 + B d + C d^2 + D d^5 + E d^2 (beta + g) exp(-g)
     B = b1 - b2 t - b3 t^2 - b4 t^3,    C = c1 - c2 t + c3 t^3,    D = d1 + d2 t,    E = c4 t^3
 
-(Lee and Kesler, AIChE J. 21 (1975) 510, eqs. 3 to 6). Above its critical temperature (within 3e-7 of T_r = 1) F rises
+(Lee and Kesler, AIChE J. 21 (1975) 510). Above its critical temperature (within 3e-7 of T_r = 1) F rises
 everywhere. Below, the gas branch ends at the first zero of F' and the liquid branch begins at the last; between them F has
 one loop, and below T_r = 0.53 more, which mean nothing. Both ends are smooth in s = sqrt(1 - T_r/T_rc) and are held as
 polynomials, so that each root is sought in its own bracket only. ``REDUCED_TEMPERATURE_MIN`` is where these polynomials end.
@@ -183,7 +183,7 @@ class ReducedFluid:
         return b * x + c * x2 - k.d2 * t * (x2 * x2 * x) - 3.0 * k.c4 * t3 * x2 * (k.beta + g) * exp(-g)
 
     def log_fugacity_coefficient(self, temperature: Real, density: Real) -> Real:
-        """Return ln(phi), [-] (eq. 12 of the paper)."""
+        """Return ln(phi), [-]."""
         b, c, d, e, beta, gamma = self.isotherm(temperature)
         x = density
         x2 = x * x

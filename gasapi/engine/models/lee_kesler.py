@@ -5,7 +5,7 @@ methane) and a reference (n-octane, acentric factor 0.3978); see ``gasapi.engine
 
     Z = Z0 + h (Zr - Z0),   ln(phi) = ln(phi0) + h (ln(phir) - ln(phi0)),   h = omega/0.3978
 
-(eq. 2 of the paper; its "Z1" is (Zr - Z0)/0.3978). At equal p_r and T_r the volumes blend in the same way,
+(the paper's "Z1" is (Zr - Z0)/0.3978). At equal p_r and T_r the volumes blend in the same way,
 V = (1 - h) V0 + h Vr, so the density is explicit in temperature and pressure and has a step of its own. The pressure at a given
 density is the p_r at which the blended volume meets it, and its derivatives follow from the implicit function; densities
 at which the blend has no branch have no pressure (NaN). Within 3e-7 of Tc, between the critical points of the two fluids,
@@ -99,7 +99,8 @@ REFERENCE = BwrConstants(
 ACENTRIC_FACTOR_MAX: Final = 1.0
 """Our choice: beyond it the extrapolated blend of the liquid is no stable state at most pressures."""
 
-_BLOCK_ROWS: Final = 4096
+# rows solved together: their temporaries stay in the processor's second-level cache
+_BLOCK_ROWS: Final = 2048
 _TINY: Final = 1e-300
 _MAX_STEPS: Final = 30
 # the steps are Newton's: an error of this size is squared by the last one
@@ -154,7 +155,7 @@ def pseudo_critical(substances: Sequence[Substance], fractions: Sequence[float])
 
 
 def reduced_vapour_pressure(temperature: Real, acentric_factor: float) -> Real:
-    """Return p_r of the saturation line, [-] (eqs. 15 to 17 of the paper), for 0.3 to 1.
+    """Return p_r of the saturation line, [-], for 0.3 to 1.
 
     :param temperature: T_r, a float or an array of shape (n,), [-]
     :param acentric_factor: [-]

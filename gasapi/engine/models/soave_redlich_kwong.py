@@ -2,7 +2,7 @@
 
     p = R T/(v - b) - a_c alpha(T)/(v (v + b)),    alpha = (1 + m (1 - sqrt(T/Tc)))^2,    m = 0.480 + 1.574 w - 0.176 w^2
 
-(Soave's eqs. 5 to 9 and 13 to 15.) The constants are the exact ones that follow from the critical point,
+The constants are the exact ones that follow from the critical point,
 a_c = R^2 Tc^2/(9 (2^(1/3) - 1) pc) and b = (2^(1/3) - 1) R Tc/(3 pc). alpha is used as published beyond Tc too, for hydrogen
 and helium with their negative acentric factors as well: the k_ij in use belong with it.
 """
@@ -24,7 +24,7 @@ _ROOT = 2.0 ** (1.0 / 3.0) - 1.0
 
 
 def acentric_slope(acentric_factor: float) -> float:
-    """Return m(omega), [-] (Soave's eq. 15)."""
+    """Return m(omega), [-]."""
     return 0.480 + acentric_factor * (1.574 - 0.176 * acentric_factor)
 
 

@@ -16,7 +16,7 @@ BUTANE = Substance("butane", 0.058122, 425.1, 37.96e5, 0.200)
 
 
 def test_the_exact_constants_round_to_the_published_ones():
-    """Soave (1972), eqs. 5 and 6: 0.42747 and 0.08664; Zc is 1/3."""
+    """Soave (1972): 0.42747 and 0.08664; Zc is 1/3."""
     assert round(soave_redlich_kwong.FORM.omega_a, 5) == 0.42748
     assert soave_redlich_kwong.FORM.omega_a == pytest.approx(0.42747, abs=1.1e-5)
     assert round(soave_redlich_kwong.FORM.omega_b, 5) == 0.08664
