@@ -131,7 +131,7 @@ def function_block(table: LookupTable, text: BlockText) -> str:
 
 
 def _header(table: LookupTable, text: BlockText) -> list[str]:
-    grid = table.grid
+    grid, own = table.grid, text.uncertainty
     property, (p_unit, t_unit, unit) = text.property.replace("_", " "), text.units
     lines = [
         f"{text.name}: {property} of {text.gas}" + (f" in {unit}" if unit != "1" else ""),
@@ -142,9 +142,9 @@ def _header(table: LookupTable, text: BlockText) -> list[str]:
         f"Pressure {real(grid.pressure[0])} to {real(grid.pressure[-1])} {p_unit}"
         + (f" at an ambient pressure of {text.ambient_pressure:.9g} Pa" if text.ambient_pressure is not None else "")
         + f", temperature {real(grid.temperature[0])} to {real(grid.temperature[-1])} {t_unit}",
-        f"Grid {grid.pressure.size} x {grid.temperature.size}, {table.bytes} bytes of REAL. Bilinear interpolation "
-        f"differs from the equation by at most {100.0 * table.max_relative_error:.4g} % in 32-bit arithmetic; the equation's own uncertainty"
-        + (" is not known." if text.uncertainty is None else f" is {100.0 * text.uncertainty:.3g} % (k = 2) and comes on top."),
+        f"Grid {grid.pressure.size} x {grid.temperature.size}, {table.bytes} bytes of REAL. Bilinear interpolation differs "
+        f"from the equation by at most {100.0 * table.max_relative_error:.4g} % in 32-bit arithmetic; the equation's own "
+        + ("uncertainty is not known." if own is None else f"uncertainty is {100.0 * own:.3g} % (k = 2) and comes on top."),
         "Outside the range the inputs are held at its ends, and status says so: the value is then not that of the gas.",
         "The gas and its composition are taken as they were asked; the block cannot know when they change.",
     ]

@@ -7,9 +7,9 @@ needed for the making alone, not by a running service.
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from pathlib import Path
-from typing import Any, Final, NamedTuple
+from typing import Any, Final
 
 from apispec import APISpec
 from apispec.ext.marshmallow import MarshmallowPlugin
@@ -20,14 +20,16 @@ from marshmallow.fields import Field
 from gasapi import __version__
 from gasapi.web import answer_schemas as answers
 from gasapi.web.fields import Member
+from gasapi.web.job_operations import JOB_OPERATIONS
 from gasapi.web.metrics import CONTENT_TYPE
 from gasapi.web.negotiation import CSV, JSON
+from gasapi.web.operation import Example, Operation
 from gasapi.web.problems import KINDS, MEDIA_TYPE
 from gasapi.web.query import QueryForm
 from gasapi.web.questions import StateReader
 from gasapi.web.schemas import StateSchema
 
-__all__ = ["OPERATIONS", "Example", "Operation", "make_document", "write_document"]
+__all__ = ["OPERATIONS", "make_document", "write_document"]
 
 FILE: Final = Path(__file__).resolve().with_name("openapi.json").resolve()
 """The exported document: beside the package in the repository, inside it once installed."""
@@ -38,37 +40,6 @@ _DESCRIPTION: Final = (
     "uncertainty and the phase. All errors are problems (RFC 9457). A number stands in a body as a JSON number; unknown "
     "members and members given twice are refused. Read quality before a number is put to use."
 )
-
-
-class Example(NamedTuple):
-    """A worked example: a body, or the query of an address; its answer is asked of the service when the document is made."""
-
-    name: str
-    summary: str
-    body: Any = None
-    query: str = ""
-    accept: str = _JSON
-
-
-class Operation(NamedTuple):
-    """A route as the document has it."""
-
-    method: str
-    path: str
-    id: str
-    tag: str
-    summary: str
-    description: str
-    answer: Mapping[str, Any]
-    """Schema, or JSON schema, by media type."""
-
-    body: type[Schema] | None = None
-    query: QueryForm | None = None
-    parameters: Sequence[Mapping[str, Any]] = ()
-    refusals: tuple[int, ...] = ()
-    examples: tuple[Example, ...] = ()
-    open: bool = False
-    """Whether it is answered without a token."""
 
 
 _STATE_ANSWER: Final = {
@@ -124,6 +95,7 @@ OPERATIONS: Final[tuple[Operation, ...]] = (
             ),
         ),
     ),
+    *JOB_OPERATIONS,
     Operation(
         "get",
         "/v1/gases",
@@ -287,6 +259,7 @@ def make_document(ask: Any = None) -> dict[str, Any]:
         plugins=[_Plugin(schema_name_resolver=_schema_name)],
         tags=[
             {"name": "state", "description": "The density of a gas"},
+            {"name": "jobs", "description": "What people compute by hand from a density"},
             {"name": "catalogue", "description": "What the service knows"},
             {"name": "operation", "description": "Health and documents"},
         ],

@@ -11,8 +11,15 @@ from gasapi.service.structured_text import BlockText, block_name, function_block
 from gasapi.units import UnitMap
 from gasapi.web.job_answers import job_members
 from gasapi.web.job_questions import LookupTableAsked
+from gasapi.web.negotiation import MediaType
 
-__all__ = ["table_csv", "table_members", "table_text"]
+__all__ = ["TABLE_CSV", "TABLE_TEXT", "table_csv", "table_members", "table_text"]
+
+TABLE_CSV = MediaType("text", "csv", (("header", "present"),))
+"""RFC 4180 with the axes as header."""
+
+TABLE_TEXT = MediaType("text", "plain", (("charset", "us-ascii"),))
+"""Structured Text is ASCII."""
 
 
 def table_members(asked: LookupTableAsked, units: UnitMap, answer: LookupTableAnswer) -> dict[str, Any]:

@@ -12,16 +12,13 @@ from gasapi.errors import GasapiError
 from gasapi.service.lookup_table import answer_lookup_table
 from gasapi.web.body import read_body, require_json
 from gasapi.web.job_questions import LookupTableReader
-from gasapi.web.negotiation import JSON, MediaType, accepted
+from gasapi.web.negotiation import JSON, accepted
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid
 from gasapi.web.routes.jobs import refuse_parameters
-from gasapi.web.table_answers import table_csv, table_members, table_text
+from gasapi.web.table_answers import TABLE_CSV, TABLE_TEXT, table_csv, table_members, table_text
 
-__all__ = ["TABLE_CSV", "TABLE_TEXT", "lookup_table_routes"]
-
-TABLE_CSV = MediaType("text", "csv", (("header", "present"),))
-TABLE_TEXT = MediaType("text", "plain", (("charset", "us-ascii"),))
+__all__ = ["lookup_table_routes"]
 
 _FORMS = (JSON, TABLE_CSV, TABLE_TEXT)
 
