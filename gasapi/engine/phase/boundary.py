@@ -8,7 +8,7 @@ critical point is stepped over: the trivial solution is near there, and temperat
 from __future__ import annotations
 
 import math
-from typing import Final, NamedTuple
+from typing import Any, Final, NamedTuple
 
 import numpy as np
 
@@ -19,7 +19,8 @@ from gasapi.engine.protocol import Branch, Status
 __all__ = ["Boundary", "NamedPoint", "position_of", "trace_boundary", "wilson_start"]
 
 _LOWEST_PRESSURE: Final = 1e3
-_HIGHEST_PRESSURE: Final = 2e8
+_START_PRESSURES: Final = (2e5, 5e4, 1e4, 1e3, 7e5, 2e6, 6e6, 2e7, 6e7)
+_HIGHEST_PRESSURE: Final = 1e8
 _WEIGHT: Final = 3.0
 _FIRST_STEP: Final = 0.8
 _LONGEST_STEP: Final = 1.6
@@ -28,7 +29,7 @@ _MOST_POINTS: Final = 120
 _NODES: Final = 72
 _TRIVIAL: Final = 0.02
 _BLIND: Final = 0.15
-_SAME: Final = 0.15
+_SAME: Final = 0.03
 
 
 class NamedPoint(NamedTuple):
@@ -60,6 +61,8 @@ class Boundary(NamedTuple):
     critical: NamedPoint | None
     complete: bool
     end: str
+    reached: bool
+    """Whether the dew line was followed down to its lowest pressure, or to the coldest liquid of the equation."""
 
 
 def wilson_start(
@@ -125,18 +128,21 @@ def _start_point(system: IncipientPhase, log_pressure: float | None, temperature
 
 
 def _first_point(system: IncipientPhase, lowest_temperature: float) -> tuple[Points | None, str]:
-    """Return the dew point from which the trace starts: at the lowest pressure whose liquid is not too cold."""
-    log_p = math.log(_LOWEST_PRESSURE)
-    last = math.log(_HIGHEST_PRESSURE)
-    while log_p < last:
-        points = _start_point(system, log_p, None)
+    """Return the dew point from which the trace starts: at a moderate pressure, whose liquid is not too cold.
+
+    At lower pressures and temperatures a second liquid may be near, and the trace would set out on the wrong one.
+    """
+    cold = False
+    for pressure in _START_PRESSURES:
+        if cold and pressure <= _START_PRESSURES[0]:
+            continue
+        points = _start_point(system, math.log(pressure), None)
         if points is not None:
             t = math.exp(points.unknown[0, -1])
             liquid = system.incipient_densities(points.unknown)
-            cold = float(system.energy.lowest_temperature(liquid / liquid.sum(axis=1)[:, None])[0])
-            if t >= max(lowest_temperature, cold):
+            if t >= max(lowest_temperature, float(system.energy.lowest_temperature(liquid / liquid.sum(axis=1)[:, None])[0])):
                 return points, ""
-        log_p += 1.2
+            cold = True
     return None, "no dew point in the range of the equation"
 
 
@@ -162,15 +168,30 @@ class _Trace:
         self.slope.append(points.slope[0] / stretch)
         self.log_pressure.append(float(points.log_pressure[0]))
 
+    def take(self, other: _Trace, number: int) -> None:
+        """Take over a point of another trace."""
+        for mine, theirs in zip(self._columns(), other._columns(), strict=True):
+            mine.append(theirs[number])
+
+    def put_before(self, other: _Trace, count: int) -> None:
+        """Put the last points of a trace that runs the other way before the first."""
+        if count > 0:
+            for mine, theirs in zip(self._columns(), other._columns(), strict=True):
+                mine[:0] = theirs[: -count - 1 : -1]
+
+    def _columns(self) -> tuple[list[Any], ...]:
+        return self.position, self.unknown, self.slope, self.log_pressure
+
     def predict(self, position: float) -> Floats:
         """Extrapolate by the cubic through the last two points and their slopes."""
         if len(self.position) < 2:
             return self.unknown[-1] + (position - self.position[-1]) * self.slope[-1]
+        last = slice(-1, -3, -1) if self.position[-2] > self.position[-1] else slice(-2, None)
         return _hermite(
             np.array([position]),
-            np.array(self.position[-2:]),
-            np.stack(self.unknown[-2:]),
-            np.stack(self.slope[-2:]),
+            np.array(self.position[last]),
+            np.stack(self.unknown[last]),
+            np.stack(self.slope[last]),
         )[0]
 
 
@@ -210,10 +231,11 @@ def _hermite_slope(at: Floats, x: Floats, y: Floats, slope: Floats) -> Floats:
     return a + t * (6.0 * chord - 4.0 * a - 2.0 * b + t * 3.0 * (a + b - 2.0 * chord))
 
 
-def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperature: float) -> tuple[_Trace, bool, str]:
+def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperature: float) -> tuple[_Trace, bool, str, bool]:
     k = system.active.size
     trace = _Trace(scale, k)
     trace.add(first)
+    reached = _follow_down(system, trace, lowest_temperature)
     start_log_p = trace.log_pressure[0]
     highest = start_log_p
     step = _FIRST_STEP
@@ -249,21 +271,21 @@ def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperat
         if not good:
             step *= 0.5
             if step < _SHORTEST_STEP:
-                return trace, False, "the boundary could not be followed further"
+                return trace, False, "the boundary could not be followed further", reached
             continue
         trace.add(points)
         log_p = trace.log_pressure[-1]
         if log_p < start_log_p:
-            return trace, True, "back at the lowest pressure"
+            return trace, True, "back at the lowest pressure", reached
         if log_p > trace.log_pressure[-2] and trace.log_pressure[-2] < highest - 0.02:
-            return trace, False, "the pressure rises again on the bubble line"
+            return trace, False, "the pressure rises again on the bubble line", reached
         highest = max(highest, log_p)
         if points.unknown[0, k + 1] < coldest:
-            return trace, False, "the lowest temperature was reached"
+            return trace, False, "the lowest temperature was reached", reached
         if log_p > math.log(_HIGHEST_PRESSURE):
-            return trace, False, "the highest pressure was reached"
+            return trace, False, "the highest pressure was reached", reached
         if math.exp(s) > 0.97 * packed:
-            return trace, False, "close packing was reached"
+            return trace, False, "close packing was reached", reached
         worst = float(moved.max())
         if worst < 0.05:
             step *= 1.7
@@ -272,7 +294,37 @@ def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperat
         elif worst > 0.5:
             step *= 0.6
         step = min(step, _LONGEST_STEP)
-    return trace, False, "too many points"
+    return trace, False, "too many points", reached
+
+
+def _follow_down(system: IncipientPhase, trace: _Trace, lowest_temperature: float) -> bool:
+    """Lead a trace that could not start at the lowest pressure down to it, as far as the equation goes; tell whether it did."""
+    k = system.active.size
+    step = _FIRST_STEP
+    reached = True
+    down = _Trace(trace.scale, k)
+    down.take(trace, 0)
+    while down.log_pressure[-1] > math.log(_LOWEST_PRESSURE) + 0.05 and len(down.position) < _MOST_POINTS:
+        position = down.position[-1] - step
+        s = float(feed_log_density(np.array([position]), trace.scale)[0])
+        predicted = down.predict(position)
+        predicted[k] = s
+        points = system.step_along(predicted, s)
+        moved = np.abs(points.unknown[0] - predicted)
+        if not points.converged[0] or float(moved[k + 1]) > 0.05 or float(moved.max()) > 1.5:
+            step *= 0.5
+            if step < _SHORTEST_STEP:
+                reached = False
+                break
+            continue
+        liquid = system.incipient_densities(points.unknown)
+        cold = float(system.energy.lowest_temperature(liquid / liquid.sum(axis=1)[:, None])[0])
+        if math.exp(points.unknown[0, k + 1]) < max(lowest_temperature, cold):
+            break
+        down.add(points)
+        step = min(1.5 * step, _LONGEST_STEP) if float(moved.max()) < 0.2 else step
+    trace.put_before(down, len(down.position) - 1)
+    return reached
 
 
 def trace_boundary(energy: MixtureEnergy, fractions: Floats, lowest_temperature: float) -> tuple[Boundary | None, str]:
@@ -288,10 +340,10 @@ def trace_boundary(energy: MixtureEnergy, fractions: Floats, lowest_temperature:
     if first is None:
         return None, why
     scale = float(energy.close_packing(fractions[None])[0]) / 3.6
-    trace, complete, end = _follow(system, first, scale, lowest_temperature)
+    trace, complete, end, reached = _follow(system, first, scale, lowest_temperature)
     if len(trace.position) < 4:
         return None, end
-    return _on_grid(system, trace, scale, complete, end), end
+    return _on_grid(system, trace, scale, complete, end)._replace(reached=reached), end
 
 
 def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool, end: str) -> Boundary:
@@ -368,6 +420,7 @@ def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool
         None if critical is None else point(critical),
         complete,
         end,
+        True,
     )
 
 

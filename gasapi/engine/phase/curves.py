@@ -24,6 +24,7 @@ DIRECT: Final = -1
 _GAS: Final = int(Region.GAS)
 _LIQUID: Final = int(Region.LIQUID)
 _TWO_PHASE: Final = int(Region.TWO_PHASE)
+_FEWEST: Final = 8
 _KNOTS: Final = 160
 _FINE: Final = 8
 _STRETCH_KNOTS: Final = 96
@@ -66,12 +67,16 @@ class BoundaryCurve:
     :param shift: added to its ln p: the share of the pressure that the traced mixture has
     :param coldest: K; a line that begins below is taken to begin there because the equation ends
     :param dew_only: whether the bubble line is not to be believed: below its dew temperature all is two-phase
+    :param cut: whether an open line ends at its highest temperature already
     :raises OddBoundary: for a boundary that turns more often than this
     """
 
-    def __init__(self, b: Boundary, shift: float, coldest: float, dew_only: bool) -> None:
+    def __init__(self, b: Boundary, shift: float, coldest: float, dew_only: bool = False, cut: bool = False) -> None:
         lp, t = b.log_pressure + shift, np.exp(b.log_temperature)
-        if lp.size < 8:
+        if cut:
+            last = _node(b, b.cricondentherm, t) + 1
+            lp, t = lp[:last], t[:last]
+        if lp.size < _FEWEST:
             raise OddBoundary
         top = _node(b, b.cricondenbar, lp)
         if _falling(lp[: top + 1][::-1]) != top + 1:
@@ -96,7 +101,7 @@ class BoundaryCurve:
         hot = _node(b, b.cricondentherm, t)
         if _falling(t[: hot + 1][::-1]) != hot + 1:
             raise OddBoundary
-        fall_hot = _falling(t[hot:]) if b.cricondentherm is not None else 1
+        fall_hot = _falling(t[hot:]) if b.cricondentherm is not None and not cut else 1
         self.hottest = round(float(t[hot]), 7)
         u = np.sqrt(np.maximum(self.hottest - t[: hot + fall_hot], 0.0))
         u[: hot + 1] *= -1.0
@@ -108,6 +113,8 @@ class BoundaryCurve:
         if not self.inverse_slope < 0.0:
             raise OddBoundary
         self.ends_with_equation = self.coldest_first < 1.06 * coldest
+        # a line that was lost on the way down does not tell what happens below
+        self._lost_below = not b.reached and not self.ends_with_equation
         try:
             self.by_pressure = spline_table(w, t[: top + fall], _KELVIN)
             self.by_temperature = spline_table(u, lp[: hot + fall_hot], _LOG)
@@ -134,7 +141,9 @@ class BoundaryCurve:
                 return _GAS, math.nan, math.nan
             rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
             up = 1.0 / (rest if rest > _LEAST_INVERSE else _LEAST_INVERSE)
-            return (_GAS if t > up else _TWO_PHASE), up, math.nan
+            if t > up:
+                return (DIRECT if self._lost_below and t <= self.coldest_first else _GAS), up, math.nan
+            return (DIRECT if self._lost_below else _TWO_PHASE), up, math.nan
         w = math.sqrt(self.log_top - lp)
         up = self.by_pressure(-w)
         if t > up:
@@ -160,12 +169,15 @@ class BoundaryCurve:
         below[(low != low) & ~before & ~(t >= self.last_temperature)] = DIRECT
         if before.any():
             if self.ends_with_equation:
+                # nothing is below NaN
                 up = np.where(before, np.nan, up)
                 below[before] = _GAS
             else:
                 rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
                 up = np.where(before, 1.0 / np.where(rest > _LEAST_INVERSE, rest, _LEAST_INVERSE), up)
         state = np.where(t > up, np.int8(_GAS), below)
+        if self._lost_below:
+            state[before & (t <= self.coldest_first)] = DIRECT
         above = lp > self.log_top
         if above.any():
             state[above] = DIRECT

@@ -2,7 +2,8 @@
 
 In the variables (T, rho_1 ... rho_n) a phase equilibrium needs no density solve of its own: with psi the residual Helmholtz
 energy of a volume over R T and g_i = d psi/d rho_i, the fugacity is f_i = rho_i R T exp(g_i), and
-p = R T (rho + sum rho_i g_i - psi). Newton's method then works on densities and temperature together (Deiters and Bell, Ind. Eng. Chem. Res. 58 (2019) 2983).
+p = R T (rho + sum rho_i g_i - psi). Newton's method then works on densities and temperature together (Deiters and Bell,
+Ind. Eng. Chem. Res. 58 (2019) 2983).
 
 These are ordinary NumPy sums, whose last bits may depend on the number of rows. They may therefore feed an answer only where
 the rows are fixed by the composition (or by the composition and one state), never by how many states were asked together.

@@ -98,6 +98,7 @@ _NEAR_PRESSURE: Final = 0.1
 _LIGHT: Final = 460.0
 """K: critical temperatures of the butanes lie below, those of the pentanes at it or above."""
 
+_LOG_CHECKED: Final = math.log(3e7)
 _LOG_HOT: Final = math.log(_HOT_PRESSURE)
 _WATER_CRITICAL: Final = 660.0
 
@@ -277,7 +278,7 @@ class MixturePhase:
         if b is None:
             return (), False
         try:
-            curve = BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, False)
+            curve = BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE)
             # a line that has no critical point may not be the only one
             doubtful = (
                 checked or (curve.closed and b.critical is None) or (not curve.closed and b.end.startswith("the boundary"))
@@ -285,7 +286,10 @@ class MixturePhase:
             test = StabilityTest(rest, z, None)
             if not doubtful or self._agrees((curve,), test):
                 return (curve,), True
-            curves = (BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, True), *self._lean_curve(rest, z))
+            if not curve.closed:
+                curve = BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, cut=True)
+                return ((curve,), True) if self._agrees((curve,), test) else ((), False)
+            curves = (BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, dew_only=True), *self._lean_curve(rest, z))
             return (curves, True) if len(curves) > 1 and self._agrees(curves, test) else ((), False)
         except OddBoundary:
             return (), False
@@ -298,7 +302,7 @@ class MixturePhase:
             return ()
         lean, fractions, shift = _share(rest, z, kept)
         boundary, _ = trace_boundary(lean, fractions, LOWEST_TEMPERATURE)
-        return () if boundary is None else (BoundaryCurve(boundary, self._shift + shift, LOWEST_TEMPERATURE, False),)
+        return () if boundary is None else (BoundaryCurve(boundary, self._shift + shift, LOWEST_TEMPERATURE),)
 
     def _agrees(self, curves: tuple[BoundaryCurve, ...], test: StabilityTest) -> bool:
         """Return whether states of the dry mixture just outside all curves are stable by the direct test."""
@@ -310,7 +314,7 @@ class MixturePhase:
             t = last.by_pressure(0.0)
             states = [(t, beyond), (0.5 * (t + last.hottest), beyond), (0.97 * t, beyond)]
         for part in (0.97, 0.75):
-            lp = last.log_first + part * (last.log_top - last.log_first)
+            lp = last.log_first + part * (min(last.log_top, _LOG_CHECKED) - last.log_first)
             t = max(float(c.dew_temperature(np.array([lp]))[0]) for c in curves)
             states.append((t + 1.0, lp))
         states = states[: len(states) - 1] if len(curves) > 1 else states
