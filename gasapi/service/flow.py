@@ -7,7 +7,7 @@ from typing import Literal, NamedTuple
 
 from gasapi.service.answers import StateAnswer
 from gasapi.service.context import Context
-from gasapi.service.joined import is_bad, joined
+from gasapi.service.joined import is_bad, joined, relative_density_uncertainty
 from gasapi.service.questions import StateQuestion
 from gasapi.service.reference_volume import at_reference
 from gasapi.service.state import solve_state
@@ -38,7 +38,11 @@ class FlowQuestion(NamedTuple):
 
 
 class FlowResult(NamedTuple):
-    """The flow in every measure: m3/s, m3/s at the reference condition, kg/s, mol/s; the factor [-] and kg/m3 of a meter."""
+    """The flow in every measure: m3/s, m3/s at the reference condition, kg/s, mol/s; the factor [-] and kg/m3 of a meter.
+
+    ``relative_expanded_uncertainty`` (k = 2) is that of the line density, which is the part of a conversion between actual
+    volume and mass, amount or reference volume.
+    """
 
     actual_volume: float | None = None
     reference_volume: float | None = None
@@ -46,6 +50,7 @@ class FlowResult(NamedTuple):
     amount: float | None = None
     correction_factor: float | None = None
     design_density: float | None = None
+    relative_expanded_uncertainty: float | None = None
 
 
 class FlowAnswer(NamedTuple):
@@ -81,7 +86,10 @@ def answer_flow(context: Context, question: FlowQuestion) -> FlowAnswer:
         if question.meter.design_state is not None:
             pressure, temperature = question.meter.design_state
             design = solve_state(
-                context, question.state._replace(pressure=pressure, temperature=temperature, model=line.model.id)
+                context,
+                question.state._replace(
+                    pressure=pressure, temperature=temperature, model=line.model.id, input_uncertainty=None
+                ),
             )
             sides.append(design)
             design_density = design.density
@@ -102,6 +110,7 @@ def answer_flow(context: Context, question: FlowQuestion) -> FlowAnswer:
             amount=amount,
             correction_factor=factor,
             design_density=design_density,
+            relative_expanded_uncertainty=relative_density_uncertainty(line),
         ),
     )
 

@@ -7,12 +7,19 @@ from collections.abc import Iterable, Sequence
 from gasapi.service.answers import PhaseWarning, QualityAnswer, StateAnswer
 from gasapi.service.quality import LEVELS
 
-__all__ = ["is_bad", "joined", "joined_quality"]
+__all__ = ["is_bad", "joined", "joined_quality", "relative_density_uncertainty"]
 
 
 def is_bad(answer: StateAnswer) -> bool:
     """Return whether a state gives no number."""
     return answer.density is None
+
+
+def relative_density_uncertainty(answer: StateAnswer) -> float | None:
+    """Return the expanded uncertainty (k = 2) of a density, relative, None where no input uncertainty was given."""
+    if answer.density is None or answer.density_expanded_uncertainty is None:
+        return None
+    return answer.density_expanded_uncertainty / answer.density
 
 
 def joined_quality(qualities: Sequence[QualityAnswer]) -> QualityAnswer:

@@ -6,7 +6,7 @@ from typing import Literal, NamedTuple
 
 from gasapi.service.answers import StateAnswer
 from gasapi.service.context import Context
-from gasapi.service.joined import is_bad, joined
+from gasapi.service.joined import is_bad, joined, relative_density_uncertainty
 from gasapi.service.questions import StateQuestion
 from gasapi.service.reference_volume import at_reference
 from gasapi.service.state import solve_state
@@ -45,12 +45,16 @@ class Content(NamedTuple):
 
 
 class VesselResult(NamedTuple):
-    """What is held, what was used up to the later state, what can be used down to the minimum, and for how long (s)."""
+    """What is held, what was used up to the later state, what can be used down to the minimum, and for how long (s).
+
+    ``relative_expanded_uncertainty`` (k = 2) of what is held is that of the density; the volume is taken as it was given.
+    """
 
     held: Content = Content()
     used: Content = Content()
     usable: Content = Content()
     duration: float | None = None
+    relative_expanded_uncertainty: float | None = None
 
 
 class VesselAnswer(NamedTuple):
@@ -69,7 +73,7 @@ def answer_vessel(context: Context, question: VesselQuestion) -> VesselAnswer:
     sides = list(reference.answers)
     later = low = None
     if question.later is not None:
-        later = solve_state(context, question.later._replace(model=first.model.id))
+        later = solve_state(context, question.later._replace(model=first.model.id, input_uncertainty=None))
         sides.append(later)
     if question.draw_off is not None:
         low = solve_state(
@@ -77,6 +81,7 @@ def answer_vessel(context: Context, question: VesselQuestion) -> VesselAnswer:
             question.state._replace(
                 pressure=question.draw_off.minimum_pressure,
                 ambient_pressure=question.draw_off.ambient_pressure,
+                input_uncertainty=None,
                 model=first.model.id,
             ),
         )
@@ -99,6 +104,7 @@ def answer_vessel(context: Context, question: VesselQuestion) -> VesselAnswer:
             held=content(first),
             used=Content() if later is None else content(first, later),
             usable=usable,
+            relative_expanded_uncertainty=relative_density_uncertainty(first),
             duration=None if question.draw_off is None else _duration(usable, question.draw_off),
         ),
     )

@@ -48,6 +48,7 @@ class FlowResultSchema(Schema):
     amount = _maybe()
     correction_factor = _maybe("Multiply a reading in mass or reference volume made with the design density by it.", False)
     design_density = _maybe("As given, or at the design state.", False)
+    relative_expanded_uncertainty = _maybe("Of the line density (k = 2); given where input_uncertainty was.", False)
 
 
 class FlowAnswerSchema(JobAnswerSchema):
@@ -69,6 +70,7 @@ class VesselResultSchema(Schema):
     usable_amount = _maybe(required=False)
     usable_reference_volume = _maybe(required=False)
     duration = _maybe("How long the draw-off lasts.", False)
+    relative_expanded_uncertainty = _maybe("Of what is held (k = 2); given where input_uncertainty was.", False)
 
 
 class VesselAnswerSchema(JobAnswerSchema):

@@ -76,6 +76,8 @@ def flow_members(question: FlowQuestion, units: UnitMap, answer: FlowAnswer) -> 
     if question.meter is not None:
         result["correction_factor"] = found.correction_factor
         result["design_density"] = write("density", found.design_density)
+    if question.state.input_uncertainty is not None:
+        result["relative_expanded_uncertainty"] = found.relative_expanded_uncertainty
     return job_members(answer.state, units, result)
 
 
@@ -96,6 +98,8 @@ def vessel_members(question: VesselQuestion, units: UnitMap, answer: VesselAnswe
     if question.draw_off is not None:
         result |= content(found.usable, "usable_")
         result["duration"] = write("duration", found.duration)
+    if question.state.input_uncertainty is not None:
+        result["relative_expanded_uncertainty"] = found.relative_expanded_uncertainty
     return job_members(answer.state, units, result)
 
 

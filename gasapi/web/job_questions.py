@@ -134,6 +134,15 @@ class Readings:
         value = self.get(*path)
         return 0.0 if value is None else self.units[quantity].difference_to_si(value)
 
+    def input_uncertainty(self) -> InputUncertainty | None:
+        """Return the standard uncertainties of pressure (Pa) and temperature (K), None where none was given."""
+        if self.get("input_uncertainty") is None:
+            return None
+        return InputUncertainty(
+            self.uncertainty("pressure", "input_uncertainty", "pressure"),
+            self.uncertainty("temperature", "input_uncertainty", "temperature"),
+        )
+
     def state(self, *path: str, gas: GasSpec | None = None) -> StateQuestion:
         """Return the question about one state of the job."""
         return self.state_at(*self.pair(*path), gas=gas)
@@ -263,7 +272,7 @@ class FlowReader(JobReader[FlowQuestion]):
                 design = (pressure, temperature)
             meter = FlowMeter(readings.get("meter", "principle"), readings.in_si("density", "meter", "design_density"), design)
         return FlowQuestion(
-            readings.state(),
+            readings.state()._replace(input_uncertainty=readings.input_uncertainty()),
             flow.kind,  # type: ignore[arg-type]
             readings.measured(flow, ("flow",)),
             readings.get("reference"),
@@ -284,7 +293,7 @@ class VesselReader(JobReader[VesselQuestion]):
 
     def question(self, readings: Readings) -> VesselQuestion:
         """Return the vessel."""
-        state = readings.state()
+        state = readings.state()._replace(input_uncertainty=readings.input_uncertainty())
         draw_off = None
         rate: Measured | None = readings.get("draw_off")
         if rate is not None:
@@ -328,12 +337,6 @@ class PressureDecayReader(JobReader[PressureDecayQuestion]):
 
     def question(self, readings: Readings) -> PressureDecayQuestion:
         """Return the leak test."""
-        uncertainty = None
-        if readings.get("input_uncertainty") is not None:
-            uncertainty = InputUncertainty(
-                readings.uncertainty("pressure", "input_uncertainty", "pressure"),
-                readings.uncertainty("temperature", "input_uncertainty", "temperature"),
-            )
         correlation = readings.get("correlation")
         limit = readings.get("leak_limit")
         if limit is not None:
@@ -343,7 +346,7 @@ class PressureDecayReader(JobReader[PressureDecayQuestion]):
             readings.state("end"),
             readings.in_si("volume", "volume"),
             readings.in_si("duration", "duration"),
-            uncertainty,
+            readings.input_uncertainty(),
             Correlation() if correlation is None else Correlation(**correlation),
             readings.get("reference"),
             None if limit is None else LeakLimit(*limit),

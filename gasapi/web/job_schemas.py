@@ -19,6 +19,7 @@ __all__ = [
 
 _PRESSURE = "In the unit of units.pressure."
 _TEMPERATURE = "In the unit of units.temperature."
+_UNCERTAINTY = "Standard uncertainties of the readings of the first state, in the units of the question."
 _REFERENCE = "A reference condition by name, or its temperature (K) and pressure (Pa)."
 
 
@@ -44,6 +45,7 @@ class FlowSchema(JobSchema):
     flow = job_fields.Flow(required=True, description="The flow in one measure; the answer has all.")
     reference = fields.Reference(description=_REFERENCE)
     meter = job_fields.Meter(description="A meter whose reading, made with a design density, is to be corrected.")
+    input_uncertainty = fields.Uncertainties(("pressure", "temperature"), description=_UNCERTAINTY)
 
 
 class VesselSchema(JobSchema):
@@ -55,6 +57,7 @@ class VesselSchema(JobSchema):
     reference = fields.Reference(description=_REFERENCE)
     later = job_fields.Readings(description="A second state of the same vessel: the answer says what was used.")
     draw_off = job_fields.DrawOffRate(description="A steady draw-off: the answer says how long the content lasts.")
+    input_uncertainty = fields.Uncertainties(("pressure", "temperature"), description=_UNCERTAINTY)
 
 
 class PressureDecaySchema(JobSchema):
