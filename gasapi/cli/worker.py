@@ -119,5 +119,5 @@ class CooperativeWorker(GeventWorker):
             now = monotonic()
             for wait in list(self._waits):
                 if now - wait.since > _IDLE_BEFORE_CLOSING:
-                    gevent.kill(wait.greenlet, wait, block=False)
+                    gevent.kill(wait.greenlet, wait)
             gevent.sleep(0.25)
