@@ -53,6 +53,7 @@ class Call(NamedTuple):
     parameters: list[Line]
     bodies: list[Body]
     answers: list[Answer]
+    refusals: list[Answer]
 
 
 class Schema(NamedTuple):
@@ -86,10 +87,11 @@ def schemas_of(document: Mapping[str, Any]) -> list[Schema]:
 def _call(document: Mapping[str, Any], path: str, method: str, operation: Mapping[str, Any], shared: list[Any]) -> Call:
     parameters = [_resolved(document, parameter) for parameter in (*shared, *operation.get("parameters", []))]
     request = _resolved(document, operation.get("requestBody", {}))
-    answers = []
+    answers, refusals = [], []
     for status, response in operation.get("responses", {}).items():
         found = _resolved(document, response)
-        answers.append(Answer(status, found.get("description", ""), _bodies(found.get("content", {}))))
+        answer = Answer(status, found.get("description", ""), _bodies({}, found.get("content", {})))
+        (answers if status < "4" else refusals).append(answer)
     return Call(
         _anchor(method, path),
         method.upper(),
@@ -97,8 +99,9 @@ def _call(document: Mapping[str, Any], path: str, method: str, operation: Mappin
         operation.get("summary", ""),
         _paragraphs(operation.get("description", "")),
         [_parameter(parameter) for parameter in parameters],
-        _bodies(request.get("content", {})),
+        _bodies(document, request.get("content", {})),
         answers,
+        refusals,
     )
 
 
@@ -127,14 +130,16 @@ def _parameter(parameter: Mapping[str, Any]) -> Line:
     return Line(0, parameter.get("name", ""), words, bool(parameter.get("required")), _told(parameter, schema), _target(schema))
 
 
-def _bodies(content: Mapping[str, Any]) -> list[Body]:
+def _bodies(document: Mapping[str, Any], content: Mapping[str, Any]) -> list[Body]:
+    """Return the bodies; the members of a named schema stand there only where a document to find it in is given."""
     bodies = []
     for media_type, part in content.items():
         schema = part.get("schema", {})
         examples = [(name, _text(example.get("value"))) for name, example in part.get("examples", {}).items()]
         if "example" in part:
             examples.append(("", _text(part["example"])))
-        bodies.append(Body(media_type, _members(schema), _kind(schema), _target(schema), examples))
+        lines = _members(_resolved(document, schema)) if document else _members(schema)
+        bodies.append(Body(media_type, lines, _kind(schema), _target(schema), examples))
     return bodies
 
 

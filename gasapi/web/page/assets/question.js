@@ -11,7 +11,7 @@ const NUMBERS = [
   "input_uncertainty.temperature",
 ];
 const WINDOW = ["window.pressure_low", "window.pressure_high", "window.temperature_low", "window.temperature_high"];
-const DEFAULTS = { model: "auto", basis: "mole", fraction_unit: "1" };
+const DEFAULTS = { model: "auto", basis: "mole", fraction_unit: "1", density_unit: "kg/m3" };
 
 /** What the page itself cannot read as a question; `name` is the field. */
 export class Unreadable extends Error {
