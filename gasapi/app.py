@@ -25,7 +25,9 @@ from gasapi.web.routes.jobs import job_routes
 from gasapi.web.routes.lookup_table import lookup_table_routes
 from gasapi.web.routes.operations import operation_routes
 from gasapi.web.routes.page import page_routes
+from gasapi.web.routes.series import series_routes
 from gasapi.web.routes.state import PATH, state_answerer, state_routes
+from gasapi.web.routes.states import states_routes
 from gasapi.web.tokens import TokenList
 
 __all__ = ["create_app", "create_context"]
@@ -72,7 +74,7 @@ def create_app(settings: Settings | None = None, context: Context | None = None)
     answer = state_answerer(parts)
     for routes in (state_routes(answer), catalogue_routes(parts), operation_routes(parts), page_routes(parts)):
         app.register_blueprint(routes)
-    for routes in (job_routes(parts), lookup_table_routes(parts)):
+    for routes in (job_routes(parts), lookup_table_routes(parts), series_routes(parts), states_routes(parts)):
         app.register_blueprint(routes)
     app.before_request(_note_route)
     app.register_error_handler(Problem, _problem_answer)
