@@ -171,10 +171,27 @@ class MixtureFlag(IntFlag):
 
 
 class DewUncertainty(NamedTuple):
-    """The uncertainty of a dew temperature, K (k = 2), and its basis, one of ``publication``, ``estimate``."""
+    """The uncertainty of a dew temperature (k = 2): ``kelvin`` + ``per_pascal`` p, but ``most`` K at most, and its basis."""
 
     kelvin: float
+    per_pascal: float
+    most: float
     basis: str
+
+
+_UNSURE: Final = DewUncertainty(5.0, 0.0, 5.0, "estimate")
+
+
+def _kelvin_float(u: DewUncertainty, p: float) -> float:
+    kelvin = u.kelvin + u.per_pascal * p
+    return kelvin if kelvin < u.most else u.most
+
+
+def _kelvin_block(u: DewUncertainty, p: Array) -> Array:
+    if u.per_pascal == 0.0:
+        return np.full(p.size, u.kelvin)
+    kelvin = u.kelvin + u.per_pascal * p
+    return np.where(kelvin < u.most, kelvin, u.most)
 
 
 class MixtureVerdict(NamedTuple):
@@ -238,7 +255,7 @@ class MixturePhase:
         dry: Sequence[int] | None = None,
         checked: bool = False,
         cold_water: bool = False,
-        uncertainty: tuple[DewUncertainty, DewUncertainty] = (DewUncertainty(5.0, "estimate"), DewUncertainty(5.0, "estimate")),
+        uncertainty: tuple[DewUncertainty, DewUncertainty] = (_UNSURE, _UNSURE),
     ) -> None:
         z = np.array(fractions, dtype=np.float64)
         names = energy.components
@@ -437,9 +454,9 @@ class MixturePhase:
         region = self._name_float(t, p, region)
         kelvin = None
         if up == up and not water >= up:
-            dew, kind, kelvin = up, 1, self.hydrocarbon_uncertainty.kelvin
+            dew, kind, kelvin = up, 1, _kelvin_float(self.hydrocarbon_uncertainty, p)
         elif water == water:
-            dew, kind, kelvin = water, 2, self.water_uncertainty.kelvin
+            dew, kind, kelvin = water, 2, _kelvin_float(self.water_uncertainty, p)
         else:
             dew, kind = math.nan, 0
         margin_t = _margin_temperature(t, region, dew, up, low)
@@ -648,7 +665,9 @@ class MixturePhase:
             else:
                 dew, kind = up, np.ones(t.size, dtype=np.int8)
             none = dew != dew
-            kelvin = np.where(kind == 2, self.water_uncertainty.kelvin, self.hydrocarbon_uncertainty.kelvin)
+            kelvin = _kelvin_block(self.hydrocarbon_uncertainty, p)
+            if self._wet:
+                kelvin = np.where(kind == 2, _kelvin_block(self.water_uncertainty, p), kelvin)
             if none.any():
                 kind[none] = 0
                 kelvin[none] = math.nan
@@ -787,20 +806,25 @@ def mixture_phase(system: GergSystem | CubicMixture, fractions: Sequence[float])
             system = GergSystem(system.data, [system.components[i] for i in present])
         energy: MixtureEnergy = GergEnergy(system)
         fluid: Fluid = system.fluid(z)
-        miscible, missing, allowance = False, False, (1.0, 3.0, 2.0)
+        miscible, missing, allowance = False, False, (1.0, 3.0)
+        # against enhancement factors of moist air up to 2 MPa (low by 0.1 K at 0.1 MPa, 1.3 K at 2 MPa) and the water content of
+        # methane at 7 MPa (low by 2 K)
+        water = DewUncertainty(0.5, 0.6e-6, 5.0, "estimate")
     else:
         energy = CubicEnergy(system, present)
         cubic = system.fluid(fractions)
         substances = [system.substances[i] for i in present]
         miscible = any("associating" in s.flags and s.id != WATER for s in substances)
-        fluid, missing, allowance = cubic, bool(cubic.missing_pairs), (3.0, 5.0, 5.0)
+        fluid, missing, allowance = cubic, bool(cubic.missing_pairs), (3.0, 5.0)
+        water = _UNSURE
     names = energy.components
     dry = [i for i, c in enumerate(names) if c != WATER]
-    light, heavy, water = allowance
+    light, heavy = allowance
     # pentanes and heavier: their binary data are scarcer, and traces of them decide
     kelvin = light if all(energy.critical_temperatures[i] < _LIGHT for i in dry) else heavy
     if missing:
-        kelvin, water = 2.0 * heavy, 2.0 * water
+        kelvin = 2.0 * heavy
+        water = DewUncertainty(2.0 * water.kelvin, 0.0, 2.0 * water.most, "estimate")
     return MixturePhase(
         energy,
         fluid,
@@ -808,5 +832,5 @@ def mixture_phase(system: GergSystem | CubicMixture, fractions: Sequence[float])
         dry if 0 < len(dry) < len(names) and not miscible else None,
         checked=miscible,
         cold_water=isinstance(system, GergSystem),
-        uncertainty=(DewUncertainty(kelvin, "estimate"), DewUncertainty(water, "estimate")),
+        uncertainty=(DewUncertainty(kelvin, 0.0, kelvin, "estimate"), water),
     )
