@@ -50,8 +50,8 @@ def _no_interaction(first: str, second: str) -> CubicPair:
     return CubicPair(0.0, 0.0, "")
 
 
-def mixture(substances: Sequence[Substance]) -> CubicMixture:
-    """Return the equation for a set of components."""
+def mixture(substances: Sequence[Substance], interaction: Callable[[str, str], CubicPair | None]) -> CubicMixture:
+    """Return the equation for a set of components; van der Waals' mixing rule has no interaction parameter."""
     return CubicMixture(FORM, substances, _no_interaction)
 
 
@@ -66,7 +66,7 @@ def build(
     :param fractions: mole fractions in the same order, summing to 1, [-]
     :param interaction: not used: van der Waals' mixing rule has no parameter
     """
-    return mixture(substances).fluid(fractions)
+    return mixture(substances, interaction).fluid(fractions)
 
 
 def from_constants(a: float, b: float, molar_mass: float) -> CubicFluid:
