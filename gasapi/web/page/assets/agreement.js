@@ -1,6 +1,5 @@
 // How far the equations disagree at one state: a strip with every equation's density and the band of its uncertainty.
 
-import { linear } from "./axes.js";
 import { html, svg } from "./elements.js";
 import { brief, percent, shown } from "./numbers.js";
 
@@ -11,18 +10,16 @@ export function drawAgreement(place, models, chosen, sign) {
     place.replaceChildren(html("p", {}, "No equation gives a number here."));
     return;
   }
-  const ends = known.flatMap((model) => {
-    const doubt = Math.min(model.relative_uncertainty || 0, 0.5);
-    return [Math.abs(model.relative_difference || 0), Math.min(doubt, 4 * Math.abs(model.relative_difference || 0) + 1e-4)];
-  });
-  const reach = Math.max(1e-5, ...ends) * 1.1;
-  const x = linear([-reach, reach], [0, 200]);
+  const reach = 1.2 * Math.max(1e-5, ...known.map((model) => Math.abs(model.relative_difference || 0)));
+  // a root scale: the good equations differ by a hundredth of what the poor ones do, and both are to be seen
+  const x = (value) => 100 + 100 * Math.sign(value) * Math.sqrt(Math.min(1, Math.abs(value) / reach));
+  const marks = [1e-4, 1e-3, 1e-2, 1e-1].filter((value) => value < reach);
   const rows = known.map((model) => {
     const difference = model.relative_difference ?? 0;
     const doubt = model.relative_uncertainty || 0;
-    const [from, to] = [Math.max(0, x(difference - doubt)), Math.min(200, x(difference + doubt))];
+    const [from, to] = [x(difference - doubt), x(difference + doubt)];
     const strip = svg("svg", { viewBox: "0 0 200 20", preserveAspectRatio: "none", "aria-hidden": "true" });
-    strip.append(svg("line", { class: "grid", x1: 100, x2: 100, y1: 0, y2: 20 }));
+    for (const at of [0, ...marks, ...marks.map((value) => -value)]) strip.append(svg("line", { class: "grid", x1: x(at), x2: x(at), y1: at ? 6 : 0, y2: at ? 14 : 20 }));
     if (to > from) strip.append(svg("line", { class: "whisker", x1: from, x2: to, y1: 10, y2: 10 }));
     strip.append(svg("rect", { class: "dot", x: x(difference) - 1.5, y: 2, width: 3, height: 16 }));
     const signed = `${difference > 0 ? "+" : ""}${percent(difference, 3)}`;
@@ -38,7 +35,7 @@ export function drawAgreement(place, models, chosen, sign) {
   const head = html(
     "tr",
     {},
-    ["Equation", "Density", "Difference", `From −${brief(100 * reach, 2)} % to +${brief(100 * reach, 2)} %, bars: stated uncertainty`].map((words) =>
+    ["Equation", "Density", "Difference", `±${brief(100 * reach, 2)} % at the ends, root scale; bars: stated uncertainty`].map((words) =>
       html("th", { scope: "col" }, words),
     ),
   );

@@ -31,11 +31,15 @@ export function recordOf(fields) {
   return fields.map((field) => (/[",\r\n]/.test(field) ? `"${field.replaceAll('"', '""')}"` : field)).join(",");
 }
 
-/** Give the records of a file one after another, in arrays of at most `most`; empty lines are left out. */
+/**
+ * Give the records of a file, in blocks of at most `most`: {records, lines}, with the line of the file on which each begins.
+ * Empty lines are left out.
+ */
 export async function* recordsOf(file, most, signal) {
   const reader = file.stream().pipeThrough(new TextDecoderStream()).getReader();
   let rest = "";
-  let block = [];
+  let block = { records: [], lines: [] };
+  let number = 0;
   let first = true;
   try {
     for (;;) {
@@ -47,7 +51,10 @@ export async function* recordsOf(file, most, signal) {
       const lines = text.split(/\r\n|\n|\r(?!$)/);
       rest = done ? "" : lines.pop();
       let open = "";
+      let begins = 0;
       for (const line of lines) {
+        number += 1;
+        if (!open) begins = number;
         // a quoted field may hold a line break: the record ends where its quotes are even
         const record = open ? `${open}\n${line}` : line;
         if (record.includes('"') && (record.split('"').length - 1) % 2) {
@@ -56,19 +63,25 @@ export async function* recordsOf(file, most, signal) {
         }
         open = "";
         if (record.trim() === "") continue;
-        block.push(record);
-        if (block.length === most) {
+        block.records.push(record);
+        block.lines.push(begins);
+        if (block.records.length === most) {
           yield block;
-          block = [];
+          block = { records: [], lines: [] };
         }
       }
       if (open) {
-        if (done) block.push(open);
-        else rest = `${open}\n${rest}`;
+        if (done) {
+          block.records.push(open);
+          block.lines.push(begins);
+        } else {
+          rest = `${open}\n${rest}`;
+          number = begins - 1;
+        }
       }
       if (done) break;
     }
-    if (block.length) yield block;
+    if (block.records.length) yield block;
   } finally {
     reader.cancel().catch(() => {});
   }

@@ -28,7 +28,7 @@ export function drawCurves(place, scene) {
       });
       picture.append(svg("path", { class: liquid ? `${drawn} liquid` : drawn, d: path(points) }));
     }
-    label(labels, curve, quantity, y, `${brief(curve.temperature, 5)} ${scene.units.temperature.sign}`, curve.here);
+    label(picture, labels, curve, quantity, x, y, `${brief(curve.temperature, 5)} ${scene.units.temperature.sign}`);
   }
   others.forEach((curve, n) => {
     const points = curve.pressure.map((p, i) => (curve[quantity][i] === null ? null : [x(p), y(curve[quantity][i])]));
@@ -45,9 +45,14 @@ export function drawCurves(place, scene) {
   return { x, y, cursor, height };
 }
 
-function label(labels, curve, quantity, y, words, here) {
-  const last = curve[quantity].findLast((value) => value !== null);
-  if (last !== undefined) labels.push({ at: y(last), words, here });
+/** A curve has its name where its gas ends: at the edge of the picture, or where it condenses. */
+function label(picture, labels, curve, quantity, x, y, words) {
+  const last = curve[quantity].findLastIndex((value, n) => value !== null && curve.region[n] !== "liquid");
+  const end = last >= 0 ? last : curve[quantity].findLastIndex((value) => value !== null);
+  if (end < 0) return;
+  const [px, py] = [x(curve.pressure[end]), y(curve[quantity][end])];
+  if (end >= curve.pressure.length - 3) labels.push({ at: py, words, here: curve.here });
+  else picture.append(svg("text", { class: curve.here ? "halo" : "quiet halo", "font-weight": curve.here ? 600 : 400, x: px + 5, y: py + 10 }, words));
 }
 
 /** Names of other equations stand on their curves, at places that differ so that they do not cover each other. */

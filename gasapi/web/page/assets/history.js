@@ -32,8 +32,9 @@ export function historyIn(current) {
       at("columns").replaceChildren();
       return complain("The file is empty.");
     }
-    separator = separatorOf(first.value[0]);
-    columns = columnsOf(fieldsOf(first.value[0], separator));
+    const [header] = first.value.records;
+    separator = separatorOf(header);
+    columns = columnsOf(fieldsOf(header, separator));
     drawColumns(at("columns"), columns, check);
     check();
   }
@@ -72,8 +73,8 @@ export function historyIn(current) {
     const [p, t] = ["pressure", "temperature"].map((role) => columns.findIndex((column) => column.role === role));
     const extremes = { pressure: [Infinity, -Infinity], temperature: [Infinity, -Infinity] };
     let rows = -1;
-    for await (const block of recordsOf(file, BLOCK, signal)) {
-      for (const record of block) {
+    for await (const { records } of recordsOf(file, BLOCK, signal)) {
+      for (const record of records) {
         rows += 1;
         if (rows === 0) continue;
         const fields = fieldsOf(record, separator);
@@ -117,20 +118,22 @@ export function historyIn(current) {
     let first = true;
     at("trend-panel").hidden = false;
     for await (const block of recordsOf(file, BLOCK, signal)) {
-      const records = first ? block.slice(1) : block;
+      const [records, lines] = first ? [block.records.slice(1), block.lines.slice(1)] : [block.records, block.lines];
       if (!records.length) continue;
-      const lines = records.map((record) => {
+      const rewritten = records.map((record) => {
         const fields = fieldsOf(record, separator);
         return recordOf(places.map((n) => (decimalComma && numbers.has(n) ? (fields[n] || "").trim().replace(",", ".") : (fields[n] ?? ""))));
       });
       const answer = await send(address, {
         method: "POST",
-        body: [recordOf(header), ...lines, ""].join("\r\n"),
+        body: [recordOf(header), ...rewritten, ""].join("\r\n"),
         headers: { "Content-Type": "text/csv; charset=utf-8", Accept: "text/csv" },
         signal,
       });
       const text = await answer.text();
-      const [head, ...answered] = text.split(/\r?\n/).filter((line) => line !== "");
+      const [head, ...given] = text.split(/\r?\n/).filter((line) => line !== "");
+      // the service counts the lines of the block that it was sent; the reader of the file counts those of the file
+      const answered = given.map((line, n) => line.replace(/\bline \d+("?)$/, `line ${lines[n]}$1`));
       parts.push(first ? `${head}\r\n` : "", `${answered.join("\r\n")}\r\n`);
       first = false;
       take(fieldsOf(head, ","), answered, told);
@@ -151,7 +154,7 @@ export function historyIn(current) {
       const fields = fieldsOf(record, ",");
       const number = (text) => (text === undefined || text === "" ? NaN : Number(text));
       trend.add(number(fields[density]), number(fields[factor]), Number(fields[status]), time < 0 ? "" : fields[time]);
-      if (reasons >= 0 && fields[reasons]) for (const word of fields[reasons].split(/[ ;|]+/)) told.set(word, (told.get(word) || 0) + 1);
+      if (reasons >= 0 && fields[reasons]) for (const word of fields[reasons].replace(/ ?line \d+$/, "").split(" ")) told.set(word, (told.get(word) || 0) + 1);
     }
   }
 

@@ -50,7 +50,15 @@ export function jobForm(leaf, { title, intro, fields }, changed) {
     writeAddress(null, typed(form));
     changed();
   });
-  return { form, fault, outcome, read: (name) => read(form, name) };
+  return { form, fault, outcome, read: (name) => read(form, name), suggest: (values) => suggest(form, values) };
+}
+
+/** Fill fields that nobody has typed in yet with values that fit the line. */
+function suggest(form, values) {
+  for (const [name, value] of Object.entries(values)) {
+    const field = form.elements[name];
+    if (!field.value || field.value === field.dataset.suggested) field.value = field.dataset.suggested = value;
+  }
 }
 
 function control(field) {

@@ -12,6 +12,8 @@ const FLOW_UNITS = { actual_volume: "volume_flow", reference_volume: "volume_flo
 
 const valued = (value, unit, digits = 5) => (value === null || value === undefined ? "–" : `${shown(value, digits)} ${signOf(unit)}`);
 
+const rounded = (value) => String(Number(value.toPrecision(4)));
+
 const meter = {
   leaf: "meter",
   call: "v1/flow",
@@ -107,7 +109,7 @@ const leak = {
     "With the uncertainty of the readings the answer says whether the loss can be told from none.",
   fields: [
     [number("volume", "Closed volume", "2", { quantity: "volume", unit: "m3" }), number("duration", "Time between the readings", "24", { quantity: "duration", unit: "h" })],
-    [number("end_pressure", "Pressure at the end", "39.8"), number("end_temperature", "Temperature at the end", "15")],
+    [number("end_pressure", "Pressure at the end"), number("end_temperature", "Temperature at the end")],
     [
       number("start_ambient", "Ambient pressure at the start, Pa", "", { optional: true }),
       number("end_ambient", "Ambient pressure at the end, Pa", "", { optional: true }),
@@ -117,6 +119,7 @@ const leak = {
       resultUnit("mass_flow", "Leak rate in", "g/h"),
     ],
   ],
+  suggestions: ({ pressure, temperature }) => ({ end_pressure: rounded(pressure - 0.01 * Math.abs(pressure)), end_temperature: rounded(temperature) }),
   body({ line, pressure, temperature, read }) {
     const doubt = { pressure: read("u_pressure"), temperature: read("u_temperature") };
     const ambient = (value) => (value === undefined ? {} : { ambient_pressure: value });
@@ -147,7 +150,8 @@ const share = {
   call: "v1/fraction-from-density",
   title: "Share of two gases",
   intro: "Two gases are in the line and a density meter reads: how much of the first is there? Pressure, temperature and the unit of density are those above.",
-  fields: [[gasName("first", "First gas", "hydrogen"), gasName("second", "Second gas", "nitrogen"), number("density", "Density as read, in the unit above", "", {})]],
+  fields: [[gasName("first", "First gas", "hydrogen"), gasName("second", "Second gas", "nitrogen"), number("density", "Density as read, in the unit above")]],
+  missing: "Give the density that the meter reads.",
   body({ line, pressure, temperature, read }) {
     const { gas, ...rest } = line;
     const density = read("density");
@@ -171,10 +175,10 @@ const table = {
   intro: "A small table for bilinear interpolation in a controller. Its largest error is looked for with the equation itself, in 32-bit arithmetic.",
   fields: [
     [
-      number("pressure_low", "Pressure from", "10"),
-      number("pressure_high", "to", "45"),
-      number("temperature_low", "Temperature from", "20"),
-      number("temperature_high", "to", "60"),
+      number("pressure_low", "Pressure from"),
+      number("pressure_high", "to"),
+      number("temperature_low", "Temperature from"),
+      number("temperature_high", "to"),
     ],
     [
       choice("property", "The table holds", [
@@ -191,6 +195,12 @@ const table = {
       ]),
     ],
   ],
+  suggestions: ({ pressure, temperature }) => ({
+    pressure_low: rounded(pressure - 0.5 * Math.abs(pressure)),
+    pressure_high: rounded(pressure + 0.1 * Math.abs(pressure)),
+    temperature_low: rounded(temperature),
+    temperature_high: rounded(temperature + 40),
+  }),
   body({ line, read }) {
     return {
       ...line,

@@ -76,7 +76,7 @@ export function leakPicture(place, { result, units }, context, body) {
 
 /** The density of all mixtures of the two gases, and where the reading meets them. */
 export async function sharePicture(place, { result, units }, { signal }, body) {
-  const shares = Array.from({ length: 41 }, (_, n) => n / 40);
+  const shares = Array.from({ length: 11 }, (_, n) => n / 10);
   const [first, second] = body.gases;
   const { gases, density, ...rest } = body;
   const series = await post(
@@ -120,7 +120,7 @@ export async function errorMap(place, { result, model }, { line, units, signal }
   const most = Math.max(body.tolerance, ...errors);
   const { picture, x, y } = frame(
     place,
-    [`pressure, ${units.pressure.sign}`, ""],
+    [`pressure, ${units.pressure.sign}`, `temperature, ${units.temperature.sign}`],
     [result.pressure[0], result.pressure.at(-1)],
     [result.temperature[0], result.temperature.at(-1)],
     `Error in the middle of every cell, up to ${percent(Math.max(...errors), 2)}: the fuller a cell, the nearer to the tolerance of ${percent(body.tolerance, 2)}`,
@@ -135,7 +135,8 @@ export async function errorMap(place, { result, model }, { line, units, signal }
     const [width, height] = [(right - left) * filled, (bottom - top) * filled];
     picture.append(svg("rect", { class: "cell", x: (left + right - width) / 2, y: (top + bottom - height) / 2, width, height }, svg("title", {}, percent(error, 2))));
   });
-  picture.append(svg("text", { class: "quiet", x: BOX.left - 7, y: HEIGHT - BOX.bottom + 17, "text-anchor": "end" }, units.temperature.sign));
+  // the words of the axis stand above the cells
+  picture.append(picture.querySelector("text.halo"));
 }
 
 /** Return the cells of an axis, thinned where there are more than a picture can hold. */

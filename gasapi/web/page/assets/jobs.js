@@ -36,9 +36,11 @@ function runner(job, current) {
       const { pressure, temperature, model } = question.body;
       const line = { ...commonOf(question.body), ...(model ? { model } : {}) };
       const context = { line, pressure, temperature, units, read: sheet.read, signal };
+      if (job.suggestions) sheet.suggest(job.suggestions(context));
       const body = job.body(context);
       if (body === null) {
-        sheet.outcome.replaceChildren();
+        sheet.fault.hidden = true;
+        sheet.outcome.replaceChildren(html("p", {}, job.missing));
         return;
       }
       const answer = await post(job.call, body, { signal });

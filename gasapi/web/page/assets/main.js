@@ -44,7 +44,8 @@ for (const select of document.querySelectorAll("select[form='question']")) selec
 for (const select of document.querySelectorAll("select[data-quantity]")) lastUnit(select);
 
 ask();
-gases().catch(() => {});
+// the names are fetched when somebody is about to look for one
+form.addEventListener("focusin", () => gases().catch(() => {}), { once: true });
 
 /** Ask what the form says and draw the answer. */
 async function ask() {

@@ -98,13 +98,13 @@ function boundary(picture, inside, { boundary: line, margin, units, answer, pres
   if (middle) picture.append(svg("text", { class: "dew-text halo", x: middle[0] + 10, y: middle[1] + 20 }, "dew line"));
 }
 
-/** Return the named points of a boundary as a list, however the service wraps them. */
-function pointsOf(line) {
-  const named = line.points || line.named_points || [];
-  const list = Array.isArray(named) ? named : Object.entries(named).map(([name, point]) => ({ name, ...point }));
-  return list
-    .filter((point) => point && Number.isFinite(point.pressure) && Number.isFinite(point.temperature))
-    .map((point) => ({ ...point, name: String(point.name || point.id || "").replaceAll("_", " ") }));
+/** Return the named points of a boundary: every member, at any depth, that has a pressure and a temperature of its own. */
+function pointsOf(members, name = "") {
+  if (members === null || typeof members !== "object") return [];
+  if (Number.isFinite(members.pressure) && Number.isFinite(members.temperature)) {
+    return [{ ...members, name: String(members.name || members.id || name).replaceAll("_", " ") }];
+  }
+  return Object.entries(members).flatMap(([inner, member]) => pointsOf(member, inner));
 }
 
 function state(picture, { answer, units, pressure, temperature }, x, y, width, height) {

@@ -7,7 +7,7 @@ export const LEVELS = {
 };
 
 const REASONS = {
-  ambient_pressure_assumed: "The gauge reading was taken against an ambient of 101 325 Pa, because none was given.",
+  ambient_pressure_assumed: "The gauge reading was taken against an ambient of 101 325 Pa, because none was given; the lower the pressure, the more that matters.",
   outside_validity: "The state lies outside the published range of the equation, though inside its extended limits.",
   near_dew_point: "The gas is close to its dew line: a little colder, and it condenses.",
   near_critical: "The state is close to the critical point, where a small error in a reading moves the density far.",
