@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from typing import Final, NamedTuple
 
-from scipy.optimize import brentq
+from scipy.optimize import brentq, minimize_scalar
 
 from gasapi.engine.protocol import Branch, Status
 from gasapi.errors import GasapiError
@@ -158,22 +158,34 @@ def answer_fraction_from_density(context: Context, question: FractionFromDensity
 
 def _roots(blend: _Blend, density: float, branch: Branch) -> Iterator[float]:
     """Yield every fraction at which the density on a branch is the one that was read."""
-    xs = [i / _INTERVALS for i in range(_INTERVALS + 1)]
-    gaps = [None if rho is None else rho - density for rho in (blend.density(x, branch) for x in xs)]
 
     def gap(x: float) -> float:
         rho = blend.density(x, branch)
-        # a hole in a branch between two points that have it cannot hold the root
         return math.nan if rho is None else rho - density
 
-    for i, (x, here) in enumerate(zip(xs, gaps, strict=True)):
+    points = [(x, gap(x)) for x in (i / _INTERVALS for i in range(_INTERVALS + 1))]
+    points = _with_turning_points(points, gap)
+    for i, (x, here) in enumerate(points):
         if here == 0.0:
             yield x
-        following = gaps[i + 1] if i < _INTERVALS else None
-        if here is not None and following is not None and here * following < 0.0:
-            root = brentq(gap, x, xs[i + 1], xtol=_X_TOLERANCE, rtol=1e-15, disp=False)
+        if i + 1 < len(points) and here * points[i + 1][1] < 0.0:
+            root = brentq(gap, x, points[i + 1][0], xtol=_X_TOLERANCE, rtol=1e-15, disp=False)
             if root == root:
                 yield float(root)
+
+
+def _with_turning_points(points: list[tuple[float, float]], gap: Callable[[float], float]) -> list[tuple[float, float]]:
+    """Return points with those added where the density turns round, beyond the reading: two fractions may lie beside it."""
+    found = list(points)
+    for before, here, after in zip(points, points[1:], points[2:], strict=False):
+        nearest = abs(here[1]) < abs(before[1]) and abs(here[1]) < abs(after[1])
+        if nearest and before[1] * here[1] > 0.0 and here[1] * after[1] > 0.0:
+            sign = math.copysign(1.0, here[1])
+            turn = minimize_scalar(
+                lambda x, sign=sign: sign * gap(x), bounds=(before[0], after[0]), method="bounded", options={"xatol": 1e-9}
+            )
+            found.append((float(turn.x), gap(float(turn.x))))
+    return sorted(found)
 
 
 def _reading_uncertainty(question: FractionFromDensityQuestion, state: StateAnswer) -> float:
