@@ -7,7 +7,7 @@ import { post } from "./service.js";
 import { signOf } from "./units.js";
 
 const HEIGHT = 320;
-const BOX = { left: 72, right: 20, top: 16, bottom: 46 };
+const BOX = { left: 72, right: 20, top: 28, bottom: 46 };
 
 /** An empty picture with two axes and their words. */
 function frame(place, words, across, up, label) {
@@ -25,7 +25,7 @@ function frame(place, words, across, up, label) {
   }
   picture.append(svg("rect", { class: "edge", x: BOX.left, y: BOX.top, width: width - BOX.left - BOX.right, height: HEIGHT - BOX.top - BOX.bottom }));
   picture.append(svg("text", { class: "quiet", x: width - BOX.right, y: HEIGHT - 8, "text-anchor": "end" }, words[0]));
-  picture.append(svg("text", { class: "quiet halo", x: BOX.left + 6, y: BOX.top + 14 }, words[1]));
+  picture.append(svg("text", { class: "quiet", x: BOX.left, y: BOX.top - 9 }, words[1]));
   place.replaceChildren(html("figure", { class: "panel" }, html("figcaption", {}, label), picture));
   return { picture, x, y, width };
 }
@@ -135,8 +135,6 @@ export async function errorMap(place, { result, model }, { line, units, signal }
     const [width, height] = [(right - left) * filled, (bottom - top) * filled];
     picture.append(svg("rect", { class: "cell", x: (left + right - width) / 2, y: (top + bottom - height) / 2, width, height }, svg("title", {}, percent(error, 2))));
   });
-  // the words of the axis stand above the cells
-  picture.append(picture.querySelector("text.halo"));
 }
 
 /** Return the cells of an axis, thinned where there are more than a picture can hold. */

@@ -71,7 +71,7 @@ function trace(picture, columns, name, x, range, width, words) {
   if (low > high) return;
   const room = (high - low || Math.abs(high) || 1) * 0.05;
   const y = linear([low - room, high + room], range);
-  for (const value of ticks(y.low, y.high, Math.abs(range[0] - range[1]) / 50)) {
+  for (const value of ticks(y.low, y.high, Math.abs(range[0] - range[1]) / 30)) {
     picture.append(svg("line", { class: "grid", x1: LEFT, x2: width - RIGHT, y1: y(value), y2: y(value) }));
     picture.append(svg("text", { class: "quiet", x: LEFT - 7, y: y(value) + 4, "text-anchor": "end" }, brief(value, 5)));
   }

@@ -1,0 +1,107 @@
+"""The page in a real browser: one Chromium and one running service for all tests, a fresh profile for each."""
+
+from __future__ import annotations
+
+import os
+import shutil
+
+import pytest
+from page_service import KEPT, served
+from playwright.sync_api import sync_playwright
+
+FLAGS = (
+    "--no-sandbox",
+    "--disable-gpu",
+    "--disable-quic",
+    "--no-first-run",
+    "--disable-background-networking",
+    "--disable-component-update",
+    "--disable-sync",
+)
+
+
+def _chromium() -> str:
+    found = shutil.which("chromium") or shutil.which("chromium-browser") or shutil.which("google-chrome")
+    if found is None:
+        words = "NO CHROMIUM HERE, SO THE PAGE WAS NOT TESTED IN A BROWSER: apt-get install chromium"
+        if os.environ.get("CI"):
+            pytest.fail(words)
+        pytest.skip(words)
+    return found
+
+
+@pytest.fixture(scope="session")
+def origin():
+    with served() as address:
+        yield address
+
+
+@pytest.fixture(scope="session")
+def browser():
+    path = _chromium()
+    with sync_playwright() as playwright:
+        browser = playwright.chromium.launch(executable_path=path, args=list(FLAGS))
+        yield browser
+        browser.close()
+
+
+class Visit:
+    """A browser with a fresh profile at one service; what the console says and what leaves the service is kept."""
+
+    def __init__(self, browser, origin, **options):
+        self.origin = origin
+        self.context = browser.new_context(**{"viewport": {"width": 1440, "height": 900}, **options})
+        self.context.set_default_timeout(15_000)
+        self.errors: list[str] = []
+        self.elsewhere: list[str] = []
+        self.page = self.context.new_page()
+        self.watch(self.page)
+
+    def watch(self, page):
+        page.on("console", lambda message: message.type in ("error", "warning") and self.errors.append(message.text))
+        page.on("pageerror", lambda error: self.errors.append(str(error)))
+        page.on("request", lambda request: self._is_here(request.url) or self.elsewhere.append(request.url))
+
+    def _is_here(self, address: str) -> bool:
+        return address.startswith((self.origin, "blob:" + self.origin, "data:"))
+
+    def open(self, address: str = ""):
+        self.page.goto(self.origin + address)
+        return self.page
+
+    def settled(self):
+        """Wait until nothing is being asked and the page has drawn."""
+        self.page.wait_for_load_state("networkidle")
+        self.page.evaluate("() => new Promise((done) => requestAnimationFrame(() => requestAnimationFrame(done)))")
+        return self.page
+
+    def state(self, **question):
+        """Ask the service itself."""
+        answer = self.context.request.post(f"{self.origin}v1/state", data=question)
+        assert answer.ok, answer.text()
+        return answer.json()
+
+    def keep(self, name: str, **options):
+        """Keep a picture of the page among the outputs of the test run."""
+        KEPT.mkdir(parents=True, exist_ok=True)
+        self.page.screenshot(path=KEPT / f"{name}.png", full_page=True, **options)
+
+
+@pytest.fixture
+def visit(browser, origin):
+    """A visit to the service that must end with nothing in the console and nothing fetched from elsewhere."""
+    visits = []
+
+    def start(address: str | None = "", at: str = origin, **options):
+        made = Visit(browser, at, **options)
+        visits.append(made)
+        if address is not None:
+            made.open(address)
+            made.settled()
+        return made
+
+    yield start
+    for made in visits:
+        made.context.close()
+        assert [] == made.errors
+        assert [] == made.elsewhere
