@@ -10,6 +10,7 @@ import csv
 import math
 import re
 from collections.abc import Iterator, Sequence
+from operator import methodcaller
 from typing import IO, NamedTuple
 
 import numpy as np
@@ -22,12 +23,14 @@ _PIECE = 1 << 20
 _MOST_LINES_OF_A_RECORD = 100
 _MOST_BYTES_OF_A_RECORD = 1 << 16
 _LONGEST_HEADER = 1 << 17
+_LONGEST_LINE = 1 << 24
 _BYTE_ORDER_MARK = b"\xef\xbb\xbf"
 
 _NUMBER = re.compile(rb"[ \t]*[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?[ \t]*")
-# what float() takes beyond plain numbers: digit groups, other scripts, and words
-_ODD = re.compile(rb"[^0-9eE+\-. \t]")
 _NAME = re.compile(r"\s*(.*?)\s*(?:\[\s*([^\[\]]*?)\s*\]\s*)?", re.DOTALL)
+
+
+_COMMAS = methodcaller("count", b",")
 
 
 class ColumnName(NamedTuple):
@@ -83,15 +86,15 @@ def read_blocks(body: IO[bytes], fields: int, wanted: Sequence[int]) -> Iterator
     records = _Records(fields, wanted)
     rest = b""
     while piece := body.read(_PIECE):
-        lines = (rest + piece).split(b"\n")
-        rest = lines.pop()
-        block = records.block(lines)
-        if block is not None:
-            yield block
-        if len(rest) > 16 * _PIECE:
+        data = rest + piece
+        end = data.rfind(b"\n") + 1
+        if not end and len(data) > _LONGEST_LINE:
             # a line without an end: it is cut, and cannot be read
-            block = records.block([rest])
-            rest = b""
+            data += b"\n"
+            end = len(data)
+        rest = data[end:]
+        if end:
+            block = records.simple_block(data[:end]) or records.block(data[: end - 1].split(b"\n"))
             if block is not None:
                 yield block
     block = records.block([rest] if rest else [], last=True)
@@ -110,35 +113,47 @@ class _Records:
         self._empty = 0
         self._open: list[bytes] = []
 
+    def simple_block(self, data: bytes) -> Block | None:
+        """Return the records of whole lines in which there is neither a quote nor an empty line, and every field is there.
+
+        None where anything is otherwise; nothing was taken then. This is the common case, split at once.
+        """
+        if self._open or self._empty or b'"' in data:
+            return None
+        data = data.replace(b"\r\n", b"\n")
+        if b"\n\n" in data or data.startswith(b"\n"):
+            return None
+        data = data[:-1]
+        texts = data.split(b"\n")
+        count = self._fields
+        if set(map(_COMMAS, texts)) != {count - 1}:
+            return None
+        fields = data.replace(b"\n", b",").split(b",")
+        first = self._line
+        self._line += len(texts)
+        return Block(texts, [fields[i::count] for i in self._wanted], range(first, self._line), {})
+
     def block(self, lines: list[bytes], last: bool = False) -> Block | None:
         """Return the records of the next lines, those before them included that were not complete."""
         texts, starts, broken = self._gather(lines, last)
         if not texts:
             return None
-        if not broken and not any(b'"' in text for text in texts):
-            fields = [text.split(b",") for text in texts]
-        else:
-            fields = [[] if i in broken else _split(text) for i, text in enumerate(texts)]
+        fields = [[] if i in broken else _split(text) for i, text in enumerate(texts)]
         count = self._fields
         unreadable: dict[int, int] = {}
-        if set(map(len, fields)) != {count}:
-            nothing = [b""] * count
-            for i, found in enumerate(fields):
-                if len(found) != count:
-                    unreadable[i] = starts[i]
-                    kept = [_plain(field) for field in (found or texts[i].split(b","))[:count]]
-                    texts[i] = b",".join([*kept, *nothing[len(kept) :]])
-                    fields[i] = nothing
+        nothing = [b""] * count
+        for i, found in enumerate(fields):
+            if len(found) != count:
+                unreadable[i] = starts[i]
+                kept = [_plain(field) for field in (found or texts[i].split(b","))[:count]]
+                texts[i] = b",".join([*kept, *nothing[len(kept) :]])
+                fields[i] = nothing
         columns = list(zip(*fields, strict=True))
         return Block(texts, [columns[i] for i in self._wanted], starts, unreadable)
 
     def _gather(self, lines: list[bytes], last: bool) -> tuple[list[bytes], Sequence[int], set[int]]:
         """Return the texts of records, the lines at which they begin, and the indices of those whose quotes do not end."""
         lines = [line[:-1] if line.endswith(b"\r") else line for line in lines]
-        if not self._open and not self._empty and all(lines) and not any(b'"' in line for line in lines):
-            first = self._line
-            self._line += len(lines)
-            return lines, range(first, self._line), set()
         texts: list[bytes] = []
         starts: list[int] = []
         broken: set[int] = set()
@@ -214,16 +229,25 @@ def _plain(field: bytes) -> bytes:
 
 def numbers(fields: Sequence[bytes]) -> tuple[Array, list[int]]:
     """Return fields as numbers, NaN where there is none, and the indices of those that are neither empty nor a number."""
-    if not _ODD.search(b"".join(fields)):
-        try:
-            return np.array(list(map(float, fields))), []
-        except ValueError:
-            pass
-    found = np.full(len(fields), math.nan)
+    if b"_" in b"".join(fields):
+        # float() takes digits that underscores group, a number of CSV has none
+        fields = [b"?" if b"_" in field else field for field in fields]
     wrong: list[int] = []
-    for i, field in enumerate(fields):
-        if _NUMBER.fullmatch(field):
-            found[i] = float(field)
-        elif field.strip():
-            wrong.append(i)
+    try:
+        found = np.array(list(map(float, fields)))
+    except ValueError:
+        found = np.array([_number(field) for field in fields])
+    for i in np.flatnonzero(~np.isfinite(found)).tolist():
+        # float() takes some words, too
+        if not _NUMBER.fullmatch(fields[i]):
+            found[i] = math.nan
+            if fields[i].strip():
+                wrong.append(i)
     return found, wrong
+
+
+def _number(field: bytes) -> float:
+    try:
+        return float(field)
+    except ValueError:
+        return math.nan
