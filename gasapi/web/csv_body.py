@@ -25,13 +25,14 @@ from gasapi.web.problems import Fault, Path, Problem, invalid, pointer, shown
 from gasapi.web.query import QueryForm
 from gasapi.web.series_questions import SeriesReader, Terms
 
-__all__ = ["HELD", "CsvRows", "CsvSeries", "CsvSeriesReader", "put_aside", "require_csv"]
+__all__ = ["HELD", "CsvRows", "CsvSeries", "CsvSeriesReader", "is_known_column", "put_aside", "require_csv"]
 
 HELD = 16 * 1024 * 1024
 """Bytes of a body that are held in memory; what is beyond stands in a temporary file."""
 
 _PIECE = 256 * 1024
 _FRACTION = "fraction."
+_KNOWN = ("pressure", "temperature", "timestamps", "input_status")
 _LONGEST_QUERY = 1 << 16
 
 
@@ -175,6 +176,12 @@ class CsvSeriesReader:
         return pointer((self._query.parameter_of(path),))
 
 
+def is_known_column(text: str) -> bool:
+    """Return whether a field of a header names a column that a series has, with or without a unit."""
+    folded = column_name(text).name.lower()
+    return folded in _KNOWN or (folded.startswith(_FRACTION) and len(folded) > len(_FRACTION))
+
+
 def require_csv(environ: Environ) -> None:
     """Check that a CSV body is in UTF-8, with a header and as it stands.
 
@@ -265,14 +272,14 @@ def _plan(names: Sequence[str], keep: Sequence[str], members: dict[str, Any]) ->
         folded = name.lower()
         if folded.startswith(_FRACTION) and len(folded) > len(_FRACTION):
             fractions.append((name[len(_FRACTION) :], place, unit))
-        elif folded in ("pressure", "temperature", "timestamps", "input_status"):
+        elif folded in _KNOWN:
             if folded in places:
                 faults.append(Fault("", f"there are two columns of {folded}"))
             places[folded] = place
             if unit is not None:
                 faults += _take_unit(folded, unit, members)
         elif text.strip() not in kept and name not in kept:
-            known = [*("pressure", "temperature", "timestamps", "input_status", "fraction.<name>"), "keep=<column> for others"]
+            known = [*_KNOWN, "fraction.<name>", "keep=<column> for others"]
             faults.append(Fault("", f"column {shown(text)}: {unknown_member(name, known)}"))
     for quantity in ("pressure", "temperature"):
         if quantity in places:
