@@ -6,6 +6,7 @@ Measured here with 50 clients that send half a request head and wait: this kind 
 
 from __future__ import annotations
 
+import time
 from time import monotonic
 from typing import Any
 
@@ -17,8 +18,24 @@ from gunicorn.workers.ggevent import GeventWorker
 __all__ = ["CooperativeWorker"]
 
 _READ_MARGIN = 5.0  # s that a single read may take beyond the keep-alive time
+_PATIENCE = 0.02  # s for which long work gives way to others at a time
 _TURN = 0.002  # s after which a connection that never waits lets the others have their turn
 _IDLE_BEFORE_CLOSING = 1.0  # s without a request after which a stopping worker closes a kept connection
+
+
+def _pass_turn() -> None:
+    """Let the event loop go round once, sockets included, which ``gevent.sleep(0)`` does not."""
+    hub = gevent.get_hub()
+    hub.wait(hub.loop.timer(0.0))
+
+
+def _sleep(seconds: float) -> None:
+    """Sleep; for no time at all means to let others go first until they have nothing to do, but not for long."""
+    if seconds > 0.0:
+        gevent.sleep(seconds)
+        return
+    with gevent.Timeout(_PATIENCE, False):
+        gevent.idle()
 
 
 class _Wait(gevent.Timeout):
@@ -80,11 +97,16 @@ class CooperativeWorker(GeventWorker):
         self._waits: set[_Wait] = set()
         self._turn_ends = 0.0
 
+    def patch(self) -> None:
+        """Make the standard library cooperative; ``time.sleep(0)`` is how long work asks to give way."""
+        super().patch()
+        time.sleep = _sleep  # type: ignore[assignment]
+
     def timeout_ctx(self) -> _Wait:
         """Return the bound of the wait for a request head, after a turn of the others where it is due."""
         now = monotonic()
         if now > self._turn_ends:
-            gevent.sleep(0)
+            _pass_turn()
             self._turn_ends = monotonic() + _TURN
         return _Wait(self.cfg.keepalive, self._waits)
 
