@@ -24,7 +24,7 @@ from gasapi.service.interpolation_grid import MOST_VALUES, Axes, GridTooLarge, S
 from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, Reason, quality_of
 from gasapi.service.questions import StateQuestion
-from gasapi.service.selection import choose_for_rows
+from gasapi.service.selection import AUTO, choose_for_rows
 from gasapi.service.state import ambient_flags, solve_state
 from gasapi.units import Unit
 
@@ -222,7 +222,10 @@ def answer_lookup_table(context: Context, question: LookupTableQuestion) -> Look
     sampler = _Sampler(models.prepared(choice.model), question, margin)
     surface = _survey(sampler)
     table = _table(sampler, surface)
-    return LookupTableAnswer(_verdict(context, sampler, choice.because), table)
+    because = (
+        choice.because if question.state.model != AUTO else "of the equations for this gas its range holds most of the table"
+    )
+    return LookupTableAnswer(_verdict(context, sampler, because), table)
 
 
 def _check_width(quantity: str, ends: tuple[float, float]) -> None:

@@ -307,7 +307,8 @@ class Identifier(Member):
     def _read(self, value: Any) -> str:
         """Return the name."""
         if type(value) is str and len(value) <= _LONGEST_IDENTIFIER and re.fullmatch(self.pattern, value):
-            if value.lower() in RESERVED:
+            lower = value.lower()
+            if lower in RESERVED or lower.startswith(("end_", "var_")):
                 raise self.make_error("reserved", value=shown(value))
             return value
         self.refuse(value)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from abc import ABC, abstractmethod
 from collections.abc import Callable, Mapping
-from typing import Any, Generic, NamedTuple, TypeVar
+from typing import Any, Final, Generic, NamedTuple, TypeVar
 
 from marshmallow import Schema, ValidationError
 
@@ -45,6 +45,19 @@ __all__ = [
 
 Question = TypeVar("Question")
 """The question of one job."""
+
+
+# in SI: wider than anything that is measured, narrow enough that every result is a double
+_BOUNDS: Final = {
+    "volume": (1e-15, 1e15),
+    "mass": (1e-20, 1e20),
+    "density": (1e-15, 1e6),
+    "duration": (1e-9, 1e12),
+    "volume_flow": (1e-30, 1e15),
+    "mass_flow": (1e-30, 1e15),
+    "amount_flow": (1e-30, 1e15),
+    "throughput": (1e-30, 1e15),
+}
 
 
 class AskedJob(NamedTuple, Generic[Question]):
@@ -105,12 +118,15 @@ class Readings:
     def in_si(self, quantity: str, *path: str) -> Any:
         """Return a quantity without an offset in SI, None where it is missing."""
         value = self.get(*path)
-        return None if value is None else self.positive(self.units[quantity].to_si(value), path)
+        return None if value is None else self.bounded(self.units[quantity].to_si(value), quantity, path)
 
-    def positive(self, value: float, path: tuple[str, ...]) -> float:
-        """Return a value in SI that must stay above zero and within the range of a double when it is converted."""
-        if not 0.0 < value < float("inf"):
-            self.wrong.append((path, "this leaves the range of a double when it is converted to SI units"))
+    def bounded(self, value: float, quantity: str, path: tuple[str, ...]) -> float:
+        """Return a value in SI that must be one of this world, so that no result leaves the range of a double."""
+        least, most = _BOUNDS[quantity]
+        if not least <= value <= most:
+            si = "Pa m3/s" if quantity == "throughput" else SI_UNITS[quantity].name
+            words = f"this is {value:.6g} {si}; give a {quantity.replace('_', ' ')} from {least:g} to {most:g} {si}"
+            self.wrong.append((path, words))
         return value
 
     def end(self, quantity: str, place: int) -> float:
@@ -125,8 +141,11 @@ class Readings:
         """Return a value with its own unit in SI."""
         own = unit(measured.quantity, measured.unit) if measured.unit is not None else self.units[measured.quantity]
         value: float = own.to_si(measured.value)
-        if not abs(value) < float("inf"):
-            self.wrong.append(((*path, "value"), "this leaves the range of a double when it is converted to SI units"))
+        most = _BOUNDS[measured.quantity][1]
+        if not abs(value) <= most:
+            si = SI_UNITS[measured.quantity].name
+            words = f"this is {value:.6g} {si}; give a flow of at most {most:g} {si} either way"
+            self.wrong.append(((*path, "value"), words))
         return value
 
     def uncertainty(self, quantity: str, *path: str) -> float:
@@ -312,7 +331,7 @@ class VesselReader(JobReader[VesselQuestion]):
                         f"above 0 Pa absolute and below the {state.pressure:.7g} Pa of the vessel",
                     )
                 )
-            taken = readings.positive(readings.measured(rate, ("draw_off",)), ("draw_off", "value"))
+            taken = readings.bounded(readings.measured(rate, ("draw_off",)), rate.quantity, ("draw_off", "value"))
             draw_off = DrawOff(rate.kind, taken, minimum, assumed)  # type: ignore[arg-type]
         return VesselQuestion(
             state,
@@ -340,7 +359,7 @@ class PressureDecayReader(JobReader[PressureDecayQuestion]):
         correlation = readings.get("correlation")
         limit = readings.get("leak_limit")
         if limit is not None:
-            readings.positive(limit[0], ("leak_limit", "value"))
+            readings.bounded(limit[0], "throughput" if limit[1] else "mass_flow", ("leak_limit", "value"))
         return PressureDecayQuestion(
             readings.state("start"),
             readings.state("end"),
@@ -417,7 +436,8 @@ class MolarMassReader(JobReader[MolarMassQuestion]):
         density = readings.in_si("density", "density")
         weighed = density is None
         if weighed:
-            density = readings.positive(readings.in_si("mass", "mass") / readings.in_si("volume", "volume"), ("mass",))
+            density = readings.in_si("mass", "mass") / readings.in_si("volume", "volume")
+            readings.bounded(density, "density", ("mass",))
         relative = None
         stated = readings.get("input_uncertainty")
         if stated is not None:
