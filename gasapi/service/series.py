@@ -199,8 +199,7 @@ class Survey:
         empty = np.zeros(0)
         t = np.concatenate([empty, *self._temperature])
         p = np.concatenate([empty, *self._pressure])
-        with np.errstate(invalid="ignore"):
-            usable = (t > 0.0) & (t < 1e6) & (p > 0.0) & (p < 1e13)
+        usable = _usable(t, p)
         return choose_for_rows(models, self._question.model, t[usable], p[usable])
 
 
@@ -319,7 +318,8 @@ class Series:
         for rows, x in _compositions(columns.fractions):
             model, gas = self._of_row(x)
             if model is None:
-                flags[rows] |= _FRACTIONS_BAD | self._ambient_flags(columns.pressure.take(rows))
+                t, p = columns.temperature.take(rows), columns.pressure.take(rows)
+                flags[rows] |= np.where(_usable(t, p), _FRACTIONS_BAD, _FRACTIONS_BAD | _INPUT_BAD) | self._ambient_flags(p)
                 continue
             for start in range(0, rows.size, BLOCK_ROWS):
                 self._pause()
@@ -437,6 +437,12 @@ def _accept_two_phase(
         if found is not None:
             molar[i] = found.density
             flags[i] = flags[i] & ~_TWO_PHASE | int(Reason.TWO_PHASE_ACCEPTED)
+
+
+def _usable(temperature: Array, pressure: Array) -> NDArray[np.bool_]:
+    """Return which rows are states at all, by the bounds of ``evaluate_block``, shape (n,)."""
+    with np.errstate(invalid="ignore"):
+        return cast("NDArray[np.bool_]", (temperature > 0.0) & (temperature < 1e6) & (pressure > 0.0) & (pressure < 1e13))
 
 
 def _good_fractions(fractions: Array) -> NDArray[np.bool_]:

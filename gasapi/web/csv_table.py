@@ -153,7 +153,6 @@ class _Records:
 
     def _gather(self, lines: list[bytes], last: bool) -> tuple[list[bytes], Sequence[int], set[int]]:
         """Return the texts of records, the lines at which they begin, and the indices of those whose quotes do not end."""
-        lines = [line[:-1] if line.endswith(b"\r") else line for line in lines]
         texts: list[bytes] = []
         starts: list[int] = []
         broken: set[int] = set()
@@ -163,7 +162,7 @@ class _Records:
         at = 0
         while at < len(queue):
             line = queue[at]
-            if not line:
+            if not line or line == b"\r":
                 self._empty += 1
                 at += 1
                 number += 1
@@ -179,7 +178,7 @@ class _Records:
             if end is None:
                 broken.add(len(texts))
                 end = at + 1
-            texts.append(b"\n".join(queue[at:end]))
+            texts.append(b"\n".join(queue[at:end]).removesuffix(b"\r"))
             starts.append(number)
             number += end - at
             at = end
