@@ -17,7 +17,7 @@ from scipy.interpolate import RectBivariateSpline
 
 from gasapi.engine.elementary import Array
 
-__all__ = ["MOST_VALUES", "Axes", "GridTooLarge", "Surface", "grids"]
+__all__ = ["MOST_VALUES", "Axes", "GridTooLarge", "Surface", "grids", "no_pause", "within"]
 
 _FINE: Final = 201
 _MOST_ON_AN_AXIS: Final = 1024
@@ -87,19 +87,24 @@ class _Measure(NamedTuple):
         return found
 
 
-def grids(surface: Surface, tolerance: float) -> Iterator[Axes]:
+def no_pause() -> None:
+    """Go on."""
+
+
+def grids(surface: Surface, tolerance: float, pause: Callable[[], None] = no_pause) -> Iterator[Axes]:
     """Yield grids, the smallest first that keeps the tolerance on the stand-in, and then ever finer ones.
 
     :param surface: the stand-in
     :param tolerance: the largest relative error
+    :param pause: called now and then, to let other work have its turn
     :raises GridTooLarge: the next grid would have more than 16384 values, or several finer ones did not do
     """
     measures = _measures(surface)
-    best = _search(surface, measures, tolerance)
+    best = _search(surface, measures, tolerance, pause)
     yield best
     # where the stand-in falls short of the surface, as near a critical point, a little more is tried, and then no more
     for share in _SHARES:
-        finer = _search(surface, measures, tolerance * share)
+        finer = _search(surface, measures, tolerance * share, pause)
         best = finer if finer.values > best.values else _densified(measures, best)
         yield best
     raise GridTooLarge
@@ -125,12 +130,13 @@ def _measure(points: Array, f: Block) -> _Measure:
     return _Measure(points, np.concatenate([[0.0], np.cumsum(steps)]))
 
 
-def _search(surface: Surface, measures: tuple[_Measure, _Measure], tolerance: float) -> Axes:
+def _search(surface: Surface, measures: tuple[_Measure, _Measure], tolerance: float, pause: Callable[[], None]) -> Axes:
     """Return the smallest grid with equal measures whose error on the stand-in is within the tolerance."""
     # the estimate knows nothing of errors that cancel; the share of it that holds is found by halving
     low, high = 0.25, 16.0
     best = None
     for _ in range(_TRIALS):
+        pause()
         share = (low * high) ** 0.5
         try:
             axes = _estimated(measures, tolerance * share)
@@ -144,12 +150,13 @@ def _search(surface: Surface, measures: tuple[_Measure, _Measure], tolerance: fl
     if best is None:
         best = _estimated(measures, tolerance * low)
         for _ in range(_TRIALS):
+            pause()
             if error_of(surface, best) <= tolerance:
                 break
             best = _densified(measures, best)
         else:
             raise GridTooLarge
-    return _trimmed(surface, measures, best, tolerance) if best.values <= _TRIMMED_BELOW else best
+    return _trimmed(surface, measures, best, tolerance, pause) if best.values <= _TRIMMED_BELOW else best
 
 
 def _estimated(measures: tuple[_Measure, _Measure], tolerance: float) -> Axes:
@@ -179,13 +186,16 @@ def _densified(measures: tuple[_Measure, _Measure], axes: Axes) -> Axes:
     return _axes(measures, axes.x.size + max(1, axes.x.size // 32), axes.y.size + max(1, axes.y.size // 32))
 
 
-def _trimmed(surface: Surface, measures: tuple[_Measure, _Measure], axes: Axes, tolerance: float) -> Axes:
+def _trimmed(
+    surface: Surface, measures: tuple[_Measure, _Measure], axes: Axes, tolerance: float, pause: Callable[[], None]
+) -> Axes:
     """Return the smallest grid near a given one that keeps the tolerance."""
     best = axes
     m0, n0 = axes.x.size, axes.y.size
     around = [(m, n) for m in range(max(2, m0 - 3), m0 + 4) for n in range(max(2, n0 - 3), n0 + 4) if m * n < m0 * n0]
     for m, n in sorted(around, key=lambda size: size[0] * size[1], reverse=True):
         if m * n < best.values:
+            pause()
             tried = _axes(measures, m, n)
             if error_of(surface, tried) <= tolerance:
                 best = tried

@@ -8,6 +8,7 @@ the equation itself and in the arithmetic of the controller (see ``bilinear``).
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from typing import Final, Literal, NamedTuple
 
 import numpy as np
@@ -20,7 +21,7 @@ from gasapi.service.answers import ModelAnswer, StateAnswer
 from gasapi.service.bilinear import Float32, Grid, interpolate
 from gasapi.service.context import Context
 from gasapi.service.evaluation import Block, evaluate_block, evaluate_float
-from gasapi.service.interpolation_grid import MOST_VALUES, Axes, GridTooLarge, Surface, grids, within
+from gasapi.service.interpolation_grid import MOST_VALUES, Axes, GridTooLarge, Surface, grids, no_pause, within
 from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, Reason, quality_of
 from gasapi.service.questions import StateQuestion
@@ -46,6 +47,7 @@ _EDGE: Final = 513
 _HALVINGS: Final = 60
 _JUMP: Final = 1e-3
 _NARROWEST: Final = 1e-4
+_PIECE: Final = 8192
 _POINTS: Final = 110_000
 _LEAST_INSIDE: Final = 5
 _MOST_INSIDE: Final = 33
@@ -123,8 +125,11 @@ class LookupTableAnswer(NamedTuple):
 class _Sampler:
     """A property of one gas by one equation, in the caller's units."""
 
-    def __init__(self, model: PreparedModel, question: LookupTableQuestion, margin: float) -> None:
+    def __init__(
+        self, model: PreparedModel, question: LookupTableQuestion, margin: float, pause: Callable[[], None] = no_pause
+    ) -> None:
         self.model = model
+        self.pause = pause
         self.question = question
         self.margin = margin
         self.flags = 0
@@ -141,7 +146,7 @@ class _Sampler:
         :raises RangeNotOnePhase: one of them gives no number
         """
         p, t = self.si(pressure, temperature)
-        block = evaluate_block(self.model, t, p, self.margin)
+        block = self._evaluate(t, p)
         bad = np.flatnonzero(block.flags & BAD)
         if bad.size:
             # of several reasons two phases are the one that says most
@@ -152,6 +157,15 @@ class _Sampler:
         self.flags |= int(np.bitwise_or.reduce(block.flags, initial=0))
         self.uncertainty = max(self.uncertainty, float(np.nanmax(block.uncertainty, initial=0.0)))
         return block
+
+    def _evaluate(self, temperature: Array, pressure: Array) -> Block:
+        """Return the states of rows, a piece at a time, others having their turn between two pieces."""
+        pieces = []
+        for start in range(0, pressure.size, _PIECE):
+            self.pause()
+            rows = slice(start, start + _PIECE)
+            pieces.append(evaluate_block(self.model, temperature[rows], pressure[rows], self.margin))
+        return pieces[0] if len(pieces) == 1 else Block(*(np.concatenate(columns) for columns in zip(*pieces, strict=True)))
 
     def refusal(self, flags: int, region: int, pressure: float, temperature: float) -> RangeNotOnePhase:
         """Return the error that names a state, given in the caller's units."""
@@ -199,9 +213,12 @@ class _Sampler:
         return np.ones(np.broadcast_shapes(p.shape, t.shape))
 
 
-def answer_lookup_table(context: Context, question: LookupTableQuestion) -> LookupTableAnswer:
+def answer_lookup_table(
+    context: Context, question: LookupTableQuestion, pause: Callable[[], None] = no_pause
+) -> LookupTableAnswer:
     """Return a small table of a property.
 
+    :param pause: called now and then, to let other work have its turn
     :raises RangeNotOnePhase: the range touches two phases, or states without a number
     :raises RangeTooNarrow: the range is no range in 32-bit arithmetic
     :raises ToleranceTooSmall: it would take too large a table
@@ -219,7 +236,7 @@ def answer_lookup_table(context: Context, question: LookupTableQuestion) -> Look
     if choice.model is None:
         return LookupTableAnswer(solve_state(context, question.state), None)
     margin = context.dew_point_margin if question.state.dew_point_margin is None else question.state.dew_point_margin
-    sampler = _Sampler(models.prepared(choice.model), question, margin)
+    sampler = _Sampler(models.prepared(choice.model), question, margin, pause)
     surface = _survey(sampler)
     table = _table(sampler, surface)
     because = (
@@ -335,7 +352,7 @@ def _table(sampler: _Sampler, surface: Surface) -> LookupTable:
     """Return the smallest grid whose error, looked for with the equation itself, is within the tolerance."""
     tolerance = sampler.question.tolerance
     try:
-        for axes in grids(surface, tolerance - _ROUNDING):
+        for axes in grids(surface, tolerance - _ROUNDING, sampler.pause):
             grid = _grid(sampler, _rounded(axes))
             error = _largest_error(sampler, grid) + _ROUNDING
             if error <= tolerance:

@@ -6,7 +6,7 @@ A reading never proves what a gas is; the answer says so, and names toxic candid
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from typing import Final, NamedTuple
 
 from gasapi.engine.models import ideal_gas
@@ -80,14 +80,19 @@ class MolarMassAnswer(NamedTuple):
     result: MolarMassResult
 
 
-def answer_molar_mass(context: Context, question: MolarMassQuestion) -> MolarMassAnswer:
-    """Return what a density says of a gas; raises as ``answer_state`` does."""
+def answer_molar_mass(
+    context: Context, question: MolarMassQuestion, pause: Callable[[], None] = lambda: None
+) -> MolarMassAnswer:
+    """Return what a density says of a gas; raises as ``answer_state`` does.
+
+    :param pause: called now and then, to let other work have its turn
+    """
     pressure, temperature = question.state.pressure, question.state.temperature
     ideal = question.density * GAS_CONSTANT * temperature / pressure
     like = solve_state(context, question.state) if question.has_like else None
     if like is not None and is_bad(like):
         return MolarMassAnswer(like, MolarMassResult())
-    candidates = tuple(sorted(_candidates(context, question, ideal), key=lambda c: (abs(c.relative_difference), c.id)))
+    candidates = tuple(sorted(_candidates(context, question, ideal, pause), key=lambda c: (abs(c.relative_difference), c.id)))
     warnings, caution = _words(candidates, like is None)
     state = _unknown_gas(context, question, ideal) if like is None else like
     state = joined([state], warnings)._replace(cautions=(caution, *state.cautions))
@@ -130,10 +135,11 @@ def _model_part(answer: StateAnswer) -> float:
     return answer.model.relative_uncertainty or 0.0
 
 
-def _candidates(context: Context, question: MolarMassQuestion, ideal: float) -> Iterator[Candidate]:
+def _candidates(context: Context, question: MolarMassQuestion, ideal: float, pause: Callable[[], None]) -> Iterator[Candidate]:
     for gas in context.catalogue.gases:
         if not _possible(context.catalogue, gas, question, ideal):
             continue
+        pause()
         answer = solve_state(
             context,
             question.state._replace(gas=GasSpec(gas.id), model="auto", ambient_pressure=None, input_uncertainty=None),

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import time
 from collections.abc import Callable
+from functools import partial
 from typing import Any, NamedTuple
 
 import orjson
@@ -23,9 +25,14 @@ from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid, pointer
 from gasapi.web.query import parameter_pairs
 
-__all__ = ["JOBS", "Job", "job_routes", "refuse_parameters"]
+__all__ = ["JOBS", "Job", "give_way", "job_routes", "refuse_parameters"]
 
 _FORMS = (JSON,)
+
+
+def give_way() -> None:
+    """Let other requests of this worker have their turn."""
+    time.sleep(0)
 
 
 class Job(NamedTuple):
@@ -47,7 +54,9 @@ JOBS = (
         answer_fraction_from_density,
         job_answers.fraction_from_density_members,
     ),
-    Job("molar-mass", job_questions.MolarMassReader, answer_molar_mass, job_answers.molar_mass_members),
+    Job(
+        "molar-mass", job_questions.MolarMassReader, partial(answer_molar_mass, pause=give_way), job_answers.molar_mass_members
+    ),
     Job("comparison", job_questions.ComparisonReader, answer_comparison, job_answers.comparison_members),
 )
 """Every job whose answer is JSON alone."""

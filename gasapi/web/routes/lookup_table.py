@@ -15,7 +15,7 @@ from gasapi.web.job_questions import LookupTableReader
 from gasapi.web.negotiation import JSON, accepted
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid
-from gasapi.web.routes.jobs import refuse_parameters
+from gasapi.web.routes.jobs import give_way, refuse_parameters
 from gasapi.web.table_answers import TABLE_CSV, TABLE_TEXT, table_csv, table_members, table_text
 
 __all__ = ["lookup_table_routes"]
@@ -45,7 +45,7 @@ def lookup_table_routes(parts: Parts, today: Callable[[], date] = _today) -> Blu
         refuse_parameters(environ["QUERY_STRING"])
         asked = reader.of_body(read_body(environ, limit))
         try:
-            answer = answer_lookup_table(context, asked.question.question)
+            answer = answer_lookup_table(context, asked.question.question, give_way)
         except GasapiError as error:
             raise asked.problem(error) from None
         form = asked.question.form
