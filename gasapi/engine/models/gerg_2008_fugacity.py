@@ -18,9 +18,10 @@ from collections.abc import Sequence
 from typing import Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from gasapi.engine.models.gerg_2008 import GergSystem
-from gasapi.engine.phase.energy import EnergyDerivatives, Floats, MixtureEnergy, Volumetric
+from gasapi.engine.phase.energy import EnergyDerivatives, Floats, Isotherms, MixtureEnergy, Volumetric
 
 __all__ = ["GergEnergy"]
 
@@ -56,6 +57,28 @@ _GUESSES: Final = {
     "helium": (0.227e6, -0.385),
     "argon": (4.86e6, -0.002),
 }
+
+
+class _GergIsotherms(Isotherms):
+    """Isotherms as sums of functions of delta: one coefficient for each isotherm and function."""
+
+    def __init__(self, energy: GergEnergy, slots: Floats) -> None:
+        self._energy = energy
+        self._coefficients = slots
+
+    def take(self, rows: NDArray[np.intp]) -> Isotherms:
+        """Return some of the isotherms."""
+        return _GergIsotherms(self._energy, self._coefficients[rows])
+
+    def at(self, packing: Floats) -> Volumetric:
+        """Return Z and its stiffness; see ``Isotherms``."""
+        delta = packing * _CLOSEST
+        f, u, v = self._energy.slots(np.log(delta), delta)
+        f *= self._coefficients[:, None, :]
+        first = f * u
+        second = first * u + f * v
+        a = first.sum(axis=2)
+        return Volumetric(1.0 + a, 1.0 + a + second.sum(axis=2))
 
 
 class GergEnergy(MixtureEnergy):
@@ -198,7 +221,7 @@ class GergEnergy(MixtureEnergy):
         value = 0.5 * (gradient * safe[None]).sum(axis=2)
         return value, gradient, hessian
 
-    def _slots(self, log_delta: Floats, delta: Floats) -> tuple[Floats, Floats, Floats]:
+    def slots(self, log_delta: Floats, delta: Floats) -> tuple[Floats, Floats, Floats]:
         """Return for each slot its function of delta, D of its logarithm, and D of that; shape (..., slots)."""
         shape = (*delta.shape, self._degree.size)
         exponent = log_delta[..., None] * self._degree
@@ -221,21 +244,14 @@ class GergEnergy(MixtureEnergy):
             v += 4.0 * square + linear
         return np.exp(exponent), u, v
 
-    def volumetric(self, temperature: Floats, fractions: Floats, packing: Floats) -> Volumetric:
-        """Return Z and its stiffness; see ``MixtureEnergy``."""
+    def isotherms(self, temperature: Floats, fractions: Floats) -> Isotherms:
+        """Return isotherms to be followed in density; see ``MixtureEnergy``."""
         _, reducing_temperature = self._reducing(fractions)
         log_tau = np.log(reducing_temperature / temperature)
         weights = np.concatenate([fractions, self._pair_weights(fractions)], axis=1)
         powers = np.exp(log_tau[:, None] * self._tau_exponents)
         amplitude = (weights @ self._coefficients.T) * powers.take(self._entry_power, axis=1)
-        slots = amplitude @ self._merge
-        delta = packing * _CLOSEST
-        f, u, v = self._slots(np.log(delta), delta)
-        f *= slots[:, None, :]
-        first = f * u
-        second = first * u + f * v
-        a = first.sum(axis=2)
-        return Volumetric(1.0 + a, 1.0 + a + second.sum(axis=2))
+        return _GergIsotherms(self, amplitude @ self._merge)
 
     def _pair_weights(self, fractions: Floats) -> Floats:
         partners = (fractions @ self._departures_rows).reshape(fractions.shape[0], -1, self._n)
@@ -257,7 +273,7 @@ class GergEnergy(MixtureEnergy):
         delta = density * value[0]
         log_tau = np.log(value[1] / temperature)
 
-        f, u, v = self._slots(np.log(delta), delta)
+        f, u, v = self.slots(np.log(delta), delta)
         powers = np.exp(log_tau[:, None] * self._tau_exponents)
         slot, power = self._entry_slot, self._entry_power
         stack = np.empty((6, m, slot.size))

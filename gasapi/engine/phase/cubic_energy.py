@@ -11,14 +11,35 @@ from collections.abc import Sequence
 from typing import Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from gasapi.engine.models.cubic import GAS_CONSTANT, CubicMixture
-from gasapi.engine.phase.energy import EnergyDerivatives, Floats, MixtureEnergy, Volumetric
+from gasapi.engine.phase.energy import EnergyDerivatives, Floats, Isotherms, MixtureEnergy, Volumetric
 
 __all__ = ["CubicEnergy"]
 
 _CLOSEST: Final = 0.9999
 """b rho from which the liquid root is sought downward: the pressure is infinite at 1."""
+
+
+class _CubicIsotherms(Isotherms):
+    """Isotherms of the cubic, each given by a/(b R T)."""
+
+    def __init__(self, theta: Floats, delta1: float, delta2: float) -> None:
+        self._theta, self._delta1, self._delta2 = theta, delta1, delta2
+
+    def take(self, rows: NDArray[np.intp]) -> Isotherms:
+        """Return some of the isotherms."""
+        return _CubicIsotherms(self._theta[rows], self._delta1, self._delta2)
+
+    def at(self, packing: Floats) -> Volumetric:
+        """Return Z and its stiffness; see ``Isotherms``."""
+        eta = packing * _CLOSEST
+        free = 1.0 / (1.0 - eta)
+        d1, d2 = self._delta1, self._delta2
+        form = 1.0 / ((1.0 + d1 * eta) * (1.0 + d2 * eta))
+        pull = self._theta[:, None] * eta * form
+        return Volumetric(free - pull, free * free - pull * (2.0 + (d1 + d2) * eta) * form)
 
 
 class CubicEnergy(MixtureEnergy):
@@ -68,16 +89,11 @@ class CubicEnergy(MixtureEnergy):
         cross = growth[:, :, None] * q[:, None, :]
         return a, scale * (cross + cross.transpose(0, 2, 1)) - a
 
-    def volumetric(self, temperature: Floats, fractions: Floats, packing: Floats) -> Volumetric:
-        """Return Z and its stiffness; see ``MixtureEnergy``."""
+    def isotherms(self, temperature: Floats, fractions: Floats) -> Isotherms:
+        """Return isotherms to be followed in density; see ``MixtureEnergy``."""
         a, _ = self._attraction(temperature)
-        theta = np.einsum("mi,mij,mj->m", fractions, a, fractions) / (fractions @ self._covolumes)
-        eta = packing * _CLOSEST
-        free = 1.0 / (1.0 - eta)
-        d1, d2 = self._delta1, self._delta2
-        form = 1.0 / ((1.0 + d1 * eta) * (1.0 + d2 * eta))
-        pull = theta[:, None] * eta * form
-        return Volumetric(free - pull, free * free - pull * (2.0 + (d1 + d2) * eta) * form)
+        summed = (np.matmul(a, fractions[:, :, None])[:, :, 0] * fractions).sum(axis=1)
+        return _CubicIsotherms(summed / (fractions @ self._covolumes), self._delta1, self._delta2)
 
     def derivatives(self, temperature: Floats, densities: Floats) -> EnergyDerivatives:
         """Return all first and second derivatives; see ``MixtureEnergy``."""

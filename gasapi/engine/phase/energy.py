@@ -20,7 +20,7 @@ from numpy.typing import NDArray
 
 from gasapi.engine.protocol import Branch, Status
 
-__all__ = ["EnergyDerivatives", "Floats", "MixtureEnergy", "Volumetric"]
+__all__ = ["EnergyDerivatives", "Floats", "Isotherms", "MixtureEnergy", "Volumetric"]
 
 Floats = NDArray[np.float64]
 """An array of any shape."""
@@ -53,6 +53,21 @@ class Volumetric(NamedTuple):
     stiffness: Floats
 
 
+class Isotherms(ABC):
+    """Isotherms of m compositions. Immutable."""
+
+    @abstractmethod
+    def at(self, packing: Floats) -> Volumetric:
+        """Return Z and its stiffness.
+
+        :param packing: densities over ``close_packing``, shape (m, k), [-]
+        """
+
+    @abstractmethod
+    def take(self, rows: NDArray[np.intp]) -> Isotherms:
+        """Return some of the isotherms."""
+
+
 class MixtureEnergy(ABC):
     """An equation of state for one set of components. Immutable.
 
@@ -75,12 +90,11 @@ class MixtureEnergy(ABC):
         """
 
     @abstractmethod
-    def volumetric(self, temperature: Floats, fractions: Floats, packing: Floats) -> Volumetric:
-        """Return Z and its stiffness on isotherms.
+    def isotherms(self, temperature: Floats, fractions: Floats) -> Isotherms:
+        """Return isotherms to be followed in density.
 
         :param temperature: K, shape (m,)
         :param fractions: mole fractions, shape (m, n), [-]
-        :param packing: densities over ``close_packing``, shape (m, k), [-]
         """
 
     @abstractmethod
@@ -116,7 +130,8 @@ class MixtureEnergy(ABC):
         # the ideal gas may lie below the first point
         grid = np.maximum(_WALK, 0.0)[None, :].repeat(temperature.size, axis=0)
         grid[:, 0] = np.minimum(0.5 * target, _WALK[0])
-        z, stiffness = self.volumetric(temperature, fractions, grid)
+        isotherms = self.isotherms(temperature, fractions)
+        z, stiffness = isotherms.at(grid)
         excess = grid * z - target[:, None]
         rows = np.arange(temperature.size)
         if branch == Branch.GAS:
@@ -137,26 +152,29 @@ class MixtureEnergy(ABC):
         # the guarded side: Newton's steps from the outer point cannot pass the root
         status = np.full(temperature.size, Status.NOT_CONVERGED, dtype=np.int8)
         for _ in range(_STEPS):
-            z, stiffness = (part[:, 0] for part in self.volumetric(temperature, fractions, x[:, None]))
-            residual = x * z - target
+            here = x[rows]
+            z, stiffness = (part[:, 0] for part in isotherms.at(here[:, None]))
+            residual = here * z - target[rows]
             with np.errstate(all="ignore"):
                 step = residual / stiffness
-            new = x - step
-            falls = ~(stiffness > 0.0)
-            done = ~falls & (np.abs(step) <= _DONE * x * (1.0 + np.abs(z) / np.where(falls, 1.0, stiffness)))
-            high = np.where(residual > 0.0, np.minimum(x, high), high)
-            low = np.where(residual > 0.0, low, np.maximum(x, low))
-            outside = ~((low <= new) & (new <= high))
-            lost = (falls | (outside & ~enclosed & ~done)) & (status == Status.NOT_CONVERGED)
-            inside = enclosed & (falls | outside)
-            lost &= ~enclosed
-            status = np.where(lost, Status.NO_ROOT, status).astype(np.int8)
-            new = np.where(inside, 0.5 * (low + high), new)
-            moving = status == Status.NOT_CONVERGED
-            x = np.where(moving & np.isfinite(new), new, x)
-            status = np.where(moving & done, Status.CONVERGED, status).astype(np.int8)
-            if not (status == Status.NOT_CONVERGED).any():
+                new = here - step
+                falls = ~(stiffness > 0.0)
+                done = ~falls & (np.abs(step) <= _DONE * here * (1.0 + np.abs(z) / stiffness))
+            above = residual > 0.0
+            high[rows] = np.where(above, np.minimum(here, high[rows]), high[rows])
+            low[rows] = np.where(above, low[rows], np.maximum(here, low[rows]))
+            outside = ~((low[rows] <= new) & (new <= high[rows]))
+            shut = enclosed[rows]
+            lost = (falls | (outside & ~done)) & ~shut
+            new = np.where(shut & (falls | outside), 0.5 * (low[rows] + high[rows]), new)
+            x[rows] = np.where(~lost & np.isfinite(new), new, here)
+            status[rows[lost]] = Status.NO_ROOT
+            status[rows[done & ~lost]] = Status.CONVERGED
+            left = ~(done | lost)
+            if not left.any():
                 break
+            if not left.all():
+                rows, isotherms = rows[left], isotherms.take(np.flatnonzero(left))
         return x * packed, status
 
     def log_fugacity(

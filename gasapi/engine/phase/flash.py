@@ -23,8 +23,13 @@ FlashStatus = Stability
 
 _STEPS: Final = 300
 _DEPTH: Final = 4
+_STRIDE: Final = 6.0
+_LONGEST: Final = 0.3
 _CONVERGED: Final = 1e-11
 _ACCEPTED: Final = 1e-8
+_FURTHER: Final = 1e-5
+"""How far below the tangent plane of the vapour, over R T, a third phase has to be."""
+
 _ABSENT: Final = 1e-14
 """Mole fraction that stands for a component held out of a phase."""
 
@@ -33,8 +38,9 @@ class FlashResult(NamedTuple):
     """What two phases a state splits into.
 
     ``status`` as above; ``vapour_fraction`` by amount; ``vapour`` and ``liquid`` mole fractions, shape (n,); densities of the
-    phases and of the whole, mol/m3; ``aqueous`` tells that the denser phase is liquid water. For a single phase the
-    vapour fraction is NaN, and the densities are the feed's.
+    phases and of the whole, mol/m3; ``aqueous`` tells that the denser phase is liquid water; ``third_phase`` that the vapour
+    beside it would condense further, so that these two phases are not all, and the densities are not to be used. For a single
+    phase the vapour fraction is NaN, and the densities are the feed's.
     """
 
     status: Stability
@@ -45,6 +51,7 @@ class FlashResult(NamedTuple):
     liquid_density: float
     density: float
     aqueous: bool
+    third_phase: bool
 
 
 def vapour_fraction(fractions: Floats, k: Floats) -> float:
@@ -88,7 +95,7 @@ def two_phase_flash(
     found = test.at(temperature, pressure)
     nan = float("nan")
     single = FlashResult(
-        found.verdict, nan, fractions, fractions, found.feed_density, found.feed_density, found.feed_density, False
+        found.verdict, nan, fractions, fractions, found.feed_density, found.feed_density, found.feed_density, False, False
     )
     if found.verdict != Stability.UNSTABLE:
         return single
@@ -102,9 +109,11 @@ def two_phase_flash(
     if solved is None:
         return single._replace(status=Stability.UNKNOWN)
     beta, y, x, rho_v, rho_l = solved
-    return FlashResult(
-        Stability.UNSTABLE, beta, y, x, rho_v, rho_l, 1.0 / (beta / rho_v + (1.0 - beta) / rho_l), test.is_aqueous(x)
-    )
+    whole = 1.0 / (beta / rho_v + (1.0 - beta) / rho_l)
+    aqueous = test.is_aqueous(x)
+    # hydrocarbons may condense beside the water, or water beside them
+    third = test.is_wet and test.of(np.maximum(y, _ABSENT)).at(temperature, pressure, _FURTHER).verdict == Stability.UNSTABLE
+    return FlashResult(Stability.UNSTABLE, beta, y, x, rho_v, rho_l, whole, aqueous, third)
 
 
 class _Split:
@@ -152,7 +161,7 @@ class _Split:
         best: tuple[float, tuple[float, Floats, Floats, float, float]] | None = None
         current = log_k
         last = np.inf
-        for step in range(_STEPS):
+        for _ in range(_STEPS):
             evaluated = self._evaluate(current)
             if evaluated is None:
                 if not points:
@@ -170,14 +179,18 @@ class _Split:
                 best = (size, phases)
             if size < _CONVERGED:
                 break
-            if size > 2.0 * last:
+            if size > last:
+                # still leaving the neighbourhood of the feed, where mixing would lead back to it: longer steps the same way
                 points, residuals = [], []
+                current = current + residual * min(_STRIDE, max(1.0, _LONGEST / size))
+                last = size
+                continue
             last = size
             points.append(current)
             residuals.append(residual)
             points, residuals = points[-_DEPTH - 1 :], residuals[-_DEPTH - 1 :]
             current = new
-            if step >= 4 and len(points) > 2:
+            if len(points) > 2:
                 r = np.array([residuals[i + 1] - residuals[i] for i in range(len(points) - 1)]).T
                 x = np.array([points[i + 1] - points[i] for i in range(len(points) - 1)]).T
                 weights = np.linalg.lstsq(r, residual, rcond=1e-10)[0]

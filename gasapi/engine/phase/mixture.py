@@ -768,9 +768,14 @@ class MixturePhase:
         water_t = line.temperature_block(water_lp) if line else empty
         if b is None:
             return MixtureOutline(empty, empty, water_t, np.exp(water_lp), None, None, None, False, self.end)
+        # a bubble line is left where its pressure rises again
+        steps = np.diff(b.log_pressure) < 0.0
+        top = int(steps.argmax()) if steps.any() else b.log_pressure.size - 1
+        fall = steps[top:]
+        end = b.log_pressure.size if bool(fall.all()) else top + int(fall.argmin()) + 1
         return MixtureOutline(
-            np.exp(b.log_temperature),
-            np.exp(b.log_pressure + self._shift),
+            np.exp(b.log_temperature[:end]),
+            np.exp(b.log_pressure[:end] + self._shift),
             water_t,
             np.exp(water_lp),
             self._shifted(b.critical),
@@ -807,8 +812,8 @@ def mixture_phase(system: GergSystem | CubicMixture, fractions: Sequence[float])
         energy: MixtureEnergy = GergEnergy(system)
         fluid: Fluid = system.fluid(z)
         miscible, missing, allowance = False, False, (1.0, 3.0)
-        # against enhancement factors of moist air up to 2 MPa (low by 0.1 K at 0.1 MPa, 1.3 K at 2 MPa) and the water content of
-        # methane at 7 MPa (low by 2 K)
+        # against enhancement factors of moist air (low by 0.1 K at 0.1 MPa and 1.3 K at 2 MPa) and the water content of methane
+        # at 7 MPa (low by 2 K)
         water = DewUncertainty(0.5, 0.6e-6, 5.0, "estimate")
     else:
         energy = CubicEnergy(system, present)

@@ -22,12 +22,12 @@ from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.water import COLD, COLD_DENSITY, SOLUTES, WATER, LiquidWater
 from gasapi.engine.protocol import Branch, Status
 
-__all__ = ["Stability", "StabilityResult", "StabilityTest"]
+__all__ = ["PROOF", "Stability", "StabilityResult", "StabilityTest"]
 
 _SUBSTITUTIONS: Final = 7
 _NEWTON_STEPS: Final = 30
 _CLOSE: Final = 1e-8
-_PROOF: Final = 1e-7
+PROOF: Final = 1e-7
 """A tangent-plane distance (over R T) below minus this proves instability; rounding is some 1e-10."""
 
 _TRIVIAL: Final = 1e-4
@@ -77,6 +77,18 @@ class StabilityTest:
         self._water = liquid_water.index if liquid_water is not None else -1
         self._hydrocarbon = np.array([c != WATER for c in names]) if self._water >= 0 else everything
         self._aqueous = np.array([c == WATER or c in SOLUTES for c in names])
+
+    @property
+    def is_wet(self) -> bool:
+        """Whether water keeps to its own trial."""
+        return self._water >= 0
+
+    def of(self, fractions: Floats) -> StabilityTest:
+        """Return the test for another composition of the same components.
+
+        :param fractions: mole fractions, shape (n,), all above 0, [-]
+        """
+        return StabilityTest(self.energy, fractions, self._liquid_water)
 
     def is_aqueous(self, fractions: Floats) -> bool:
         """Return whether a phase of these mole fractions, shape (n,), is liquid water beside dry hydrocarbons."""
@@ -149,11 +161,12 @@ class StabilityTest:
                 trials.append((branch, mask, np.where(mask, w, 0.0)))
         return trials
 
-    def at(self, temperature: float, pressure: float) -> StabilityResult:
+    def at(self, temperature: float, pressure: float, proof: float = PROOF) -> StabilityResult:
         """Return the verdict on one state.
 
         :param temperature: K
         :param pressure: Pa
+        :param proof: how far below the tangent plane, over R T, a trial has to be to prove instability
         """
         with np.errstate(all="ignore"):
             feed = self._feed(temperature, pressure)
@@ -177,6 +190,8 @@ class StabilityTest:
                 open_trials |= unsettled
             if worst.verdict != Stability.UNSTABLE and open_trials:
                 return worst._replace(verdict=Stability.UNKNOWN)
+            if worst.verdict == Stability.UNSTABLE and worst.distance > -proof:
+                return worst._replace(verdict=Stability.STABLE)
             return worst
 
     def _supercooled(self, temperature: float, pressure: float, log_f: Floats, worst: StabilityResult) -> StabilityResult:
@@ -186,7 +201,7 @@ class StabilityTest:
         distance = float(log_w[0] - log_f[self._water] - np.log(pressure))
         if not known[0]:
             return worst._replace(verdict=Stability.UNKNOWN)
-        if distance > -_PROOF:
+        if distance > -PROOF:
             return worst
         pure = np.zeros(self.fractions.size)
         pure[self._water] = 1.0
@@ -219,7 +234,7 @@ class StabilityTest:
             excess = np.where(mask & (w > 0.0), log_w + log_phi - log_f, 0.0)
             distance = np.where(alive, (w * excess).sum(axis=1), np.inf)
             low = int(distance.argmin())
-            if distance[low] < -_PROOF and not self._is_feed(w[low], density[low], feed_density):
+            if distance[low] < -PROOF and not self._is_feed(w[low], density[low], feed_density):
                 best = StabilityResult(
                     Stability.UNSTABLE, float(distance[low]), w[low].copy(), float(density[low]), feed_density
                 )
@@ -305,7 +320,7 @@ class StabilityTest:
                 elif other.distance < best.distance:
                     best = other
                 continue
-            if c[i] < -_PROOF and c[i] < best.distance and not self._is_feed(fractions[i], float(total[i]), feed_density):
+            if c[i] < -PROOF and c[i] < best.distance and not self._is_feed(fractions[i], float(total[i]), feed_density):
                 best = StabilityResult(Stability.UNSTABLE, float(c[i]), fractions[i].copy(), float(total[i]), feed_density)
         return best, unsettled
 
@@ -337,7 +352,7 @@ class StabilityTest:
             distance = float((fractions * excess).sum())
             if self._is_feed(fractions, float(rho[0]), feed_density):
                 return StabilityResult(Stability.STABLE, 0.0, self.fractions, feed_density, feed_density)
-            if distance < -_PROOF:
+            if distance < -PROOF:
                 return StabilityResult(Stability.UNSTABLE, distance, fractions, float(rho[0]), feed_density)
             new = np.where(mask, log_f - log_phi[0], -np.inf)
             move = np.where(mask, new - log_w, 0.0)
