@@ -21,6 +21,7 @@ from gasapi.web.problems import Problem
 from gasapi.web.representations import OrjsonProvider
 from gasapi.web.request_log import RequestLog
 from gasapi.web.routes.catalogue import catalogue_routes
+from gasapi.web.routes.guide import guide_routes
 from gasapi.web.routes.jobs import job_routes
 from gasapi.web.routes.lookup_table import lookup_table_routes
 from gasapi.web.routes.operations import operation_routes
@@ -74,7 +75,8 @@ def create_app(settings: Settings | None = None, context: Context | None = None)
     answer = state_answerer(parts)
     for routes in (state_routes(answer), catalogue_routes(parts), operation_routes(parts), page_routes(parts)):
         app.register_blueprint(routes)
-    for routes in (job_routes(parts), lookup_table_routes(parts), series_routes(parts), states_routes(parts)):
+    jobs = (job_routes(parts), lookup_table_routes(parts), guide_routes())
+    for routes in (*jobs, series_routes(parts), states_routes(parts)):
         app.register_blueprint(routes)
     app.before_request(_note_route)
     app.register_error_handler(Problem, _problem_answer)

@@ -29,6 +29,7 @@ DEFAULT_TOLERANCE: Final = 0.01
 """How far a candidate's density may lie from a reading whose uncertainty is not given, relative."""
 
 _MOST_NAMED: Final = 12
+_BETWEEN_PAUSES: Final = 8
 _FAR_FROM_IDEAL: Final = 0.2
 _SATURATION_SLACK: Final = 3.0
 _BEYOND_SECOND_VIRIAL: Final = 0.1
@@ -136,10 +137,13 @@ def _model_part(answer: StateAnswer) -> float:
 
 
 def _candidates(context: Context, question: MolarMassQuestion, ideal: float, pause: Callable[[], None]) -> Iterator[Candidate]:
+    tried = 0
     for gas in context.catalogue.gases:
         if not _possible(context.catalogue, gas, question, ideal):
             continue
-        pause()
+        tried += 1
+        if tried % _BETWEEN_PAUSES == 0:
+            pause()
         answer = solve_state(
             context,
             question.state._replace(gas=GasSpec(gas.id), model="auto", ambient_pressure=None, input_uncertainty=None),

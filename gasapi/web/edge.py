@@ -28,7 +28,7 @@ BODY = "gasapi.body"
 ROUTE = "gasapi.route"
 """Key of the environ under which the rule of the route stands once it is known."""
 
-OPEN_PATHS = frozenset({"/", "/catalogue", "/interface", "/livez", "/readyz"})
+OPEN_PATHS = frozenset({"/", "/catalogue", "/guide", "/interface", "/livez", "/readyz"})
 """What is answered without a token: health, and the page for people with its papers, which asks for the token."""
 
 LONGEST_REMEMBERED = 8 * 1024

@@ -14,7 +14,7 @@ import referencing.jsonschema
 from gasapi.web.openapi import OPERATIONS, make_document
 
 EXPORTED = Path(__file__).resolve().parents[2] / "openapi" / "openapi.json"
-PAPERS = {"/assets/{digest}/{name}", "/catalogue", "/interface"}
+PAPERS = {"/assets/{digest}/{name}", "/catalogue", "/guide", "/interface"}
 """What belongs to the page for people and is no part of the interface for programs."""
 
 
