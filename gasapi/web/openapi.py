@@ -28,6 +28,7 @@ from gasapi.web.problems import KINDS, MEDIA_TYPE
 from gasapi.web.query import QueryForm
 from gasapi.web.questions import StateReader
 from gasapi.web.schemas import StateSchema
+from gasapi.web.series_operations import SERIES_OPERATIONS
 
 __all__ = ["OPERATIONS", "make_document", "write_document"]
 
@@ -95,6 +96,7 @@ OPERATIONS: Final[tuple[Operation, ...]] = (
             ),
         ),
     ),
+    *SERIES_OPERATIONS,
     *JOB_OPERATIONS,
     Operation(
         "get",
@@ -318,7 +320,7 @@ def _operation(operation: Operation, ask: Any) -> dict[str, Any]:
         examples = {e.name: {"summary": e.summary, "value": e.body} for e in operation.examples if e.accept == _JSON}
         if examples:
             content["examples"] = examples
-        described["requestBody"] = {"required": True, "content": {_JSON: content}}
+        described["requestBody"] = {"required": True, "content": {_JSON: content, **operation.other_bodies}}
     for status in operation.refusals:
         described["responses"][str(status)] = KINDS[status].component
     if ask is not None:
@@ -340,7 +342,7 @@ def _answer(operation: Operation, example: Example, ask: Any) -> tuple[str, Any]
     if example.accept != _JSON:
         return example.accept, response.text
     value = response.get_json()
-    for holder in (value, value.get("trace", {})):
+    for holder in (value, value.get("trace", {}), *(answer.get("trace", {}) for answer in value.get("answers", ()))):
         if "data" in holder:
             # the hash of data and code would make the document change with every change of the engine
             holder["data"] = "sha256:" + 64 * "0"

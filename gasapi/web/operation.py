@@ -38,6 +38,9 @@ class Operation(NamedTuple):
     """Schema, or JSON schema, by media type."""
 
     body: type[Schema] | None = None
+    other_bodies: Mapping[str, Mapping[str, Any]] = {}
+    """Content by media type, for what may be sent in place of JSON."""
+
     query: QueryForm | None = None
     parameters: Sequence[Mapping[str, Any]] = ()
     refusals: tuple[int, ...] = ()
