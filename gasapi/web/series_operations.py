@@ -69,8 +69,8 @@ SERIES_OPERATIONS: Final[tuple[Operation, ...]] = (
         "askSeries",
         "state",
         "A history in one call",
-        "Columns of pressure and temperature of one gas, or of one whose composition changes by the row, in JSON or CSV, either "
-        "way. One equation serves all rows; a row has the numbers of the single state with that equation named. Missing "
+        "Columns of pressure and temperature of one gas, or of one whose composition changes by the row, in JSON or CSV "
+        "either way. One equation serves all rows; a row has the numbers of the single state with that equation named. Missing "
         "and absurd readings make bad rows, never a failed request. Parameters belong to a CSV body alone.",
         {str(JSON): SeriesAnswerSchema, str(CSV_WITH_HEADER): _CSV_ANSWER, str(CSV): _CSV_ANSWER},
         body=SeriesSchema,
