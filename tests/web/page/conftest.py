@@ -9,6 +9,14 @@ import pytest
 from page_service import KEPT, served
 from playwright.sync_api import sync_playwright
 
+SETTLED = """async () => {
+  const frame = () => new Promise((done) => requestAnimationFrame(done));
+  do {
+    while (document.querySelector("main[aria-busy]")) await frame();
+    await frame();
+    await frame();
+  } while (document.querySelector("main[aria-busy]"));
+}"""
 FLAGS = (
     "--no-sandbox",
     "--disable-gpu",
@@ -58,7 +66,12 @@ class Visit:
         self.watch(self.page)
 
     def watch(self, page):
-        page.on("console", lambda message: message.type in ("error", "warning") and self.errors.append(message.text))
+        page.on(
+            "console",
+            lambda message: (
+                message.type in ("error", "warning") and self.errors.append(f"{message.text} {message.location.get('url')}")
+            ),
+        )
         page.on("pageerror", lambda error: self.errors.append(str(error)))
         page.on("request", lambda request: self._is_here(request.url) or self.elsewhere.append(request.url))
 
@@ -71,8 +84,7 @@ class Visit:
 
     def settled(self):
         """Wait until nothing is being asked and the page has drawn."""
-        self.page.wait_for_load_state("networkidle")
-        self.page.evaluate("() => new Promise((done) => requestAnimationFrame(() => requestAnimationFrame(done)))")
+        self.page.evaluate(SETTLED)
         return self.page
 
     def state(self, **question):

@@ -5,18 +5,28 @@ import { get } from "./service.js";
 
 const MOST = 12;
 let catalogue = null;
+let known = null;
 let count = 0;
 
 /** Return all gases of the service, fetched once. */
 export function gases() {
   catalogue ||= get("v1/gases").then(
-    (answer) => answer.gases.map((gas) => ({ ...gas, names: [gas.name, gas.id, gas.formula, gas.cas, ...gas.synonyms].filter(Boolean) })),
+    (answer) => {
+      const all = answer.gases.map((gas) => ({ ...gas, names: [gas.name, gas.id, gas.formula, gas.cas, ...gas.synonyms].filter(Boolean) }));
+      known = new Set(all.flatMap((gas) => gas.names.map((name) => name.toLowerCase())));
+      return all;
+    },
     (error) => {
       catalogue = null;
       throw error;
     },
   );
   return catalogue;
+}
+
+/** Return whether a text is the whole name of a gas, as far as the names are here already. */
+export function isName(text) {
+  return !known || known.has(text.trim().toLowerCase());
 }
 
 /** Give a text field its list. The field tells a choice with an `input` event, as if it had been typed. */

@@ -5,7 +5,7 @@ import { fieldsOf, recordOf, recordsOf, separatorOf } from "./csv.js";
 import { html } from "./elements.js";
 import { parsed } from "./numbers.js";
 import { commonOf } from "./scene.js";
-import { post, send } from "./service.js";
+import { post, send, wordsOf } from "./service.js";
 import { drawTrend, Trend } from "./trend.js";
 import { reasonWords } from "./words.js";
 
@@ -61,7 +61,7 @@ export function historyIn(current) {
       await answerAll(question, model, survey.rows, signal);
     } catch (error) {
       if (error.name === "AbortError") counted("Stopped.");
-      else complain([error.message, ...(error.faults || []).map((fault) => fault.detail)].filter((words, n, all) => all.indexOf(words) === n).join(" "));
+      else complain(wordsOf(error));
     } finally {
       at("stop").hidden = true;
       at("run").hidden = false;

@@ -4,7 +4,7 @@ import { html, qualityMark } from "./elements.js";
 import { jobForm, results } from "./job-form.js";
 import { JOBS } from "./job-list.js";
 import { commonOf } from "./scene.js";
-import { post } from "./service.js";
+import { post, wordsOf } from "./service.js";
 import { LEVELS, reasonWords } from "./words.js";
 
 /** Give every job its leaf; `current` tells the question that the sheet asks. */
@@ -51,7 +51,7 @@ function runner(job, current) {
     } catch (error) {
       if (error.name === "AbortError") return;
       sheet.fault.hidden = false;
-      sheet.fault.textContent = [error.message, ...(error.faults || []).map((fault) => fault.detail)].filter((words, n, all) => all.indexOf(words) === n).join(" ");
+      sheet.fault.textContent = wordsOf(error);
       sheet.outcome.replaceChildren();
     }
   }

@@ -3,13 +3,13 @@
 import { clearAnswer, drawAnswer } from "./answer.js";
 import { blendIn } from "./blend.js";
 import { drawCalls } from "./calls.js";
-import { combine, gases } from "./combo.js";
+import { combine, gases, isName } from "./combo.js";
 import { historyIn } from "./history.js";
 import { jobsIn } from "./jobs.js";
 import { leavesIn, writeAddress } from "./leaves.js";
 import { pictureIn } from "./picture.js";
 import { questionOf, restore } from "./question.js";
-import { post } from "./service.js";
+import { post, wordsOf } from "./service.js";
 import { unitOf } from "./units.js";
 
 const form = document.getElementById("question");
@@ -31,16 +31,18 @@ leavesIn((leaf) => {
   jobs.show(leaf);
 });
 
-form.addEventListener("input", (event) => {
-  if (event.target.closest(".part") && !event.target.name) return;
-  ask();
+form.addEventListener("input", ({ target }) => {
+  if (target.closest(".combo") && !isName(target.value)) {
+    // half a name is no question yet: it is asked when it is a gas, or when the field is left
+    asking?.abort();
+    clearAnswer("No answer yet: the name of the gas is being written");
+  } else if (!target.closest(".part") || target.name || isName(target.value)) ask();
 });
+form.addEventListener("change", ({ target }) => target.closest(".combo") && !isName(target.value) && ask());
 form.addEventListener("submit", (event) => {
   event.preventDefault();
   ask();
 });
-// selects outside the form tell of a change at themselves only
-for (const select of document.querySelectorAll("select[form='question']")) select.addEventListener("input", ask);
 for (const select of document.querySelectorAll("select[data-quantity]")) lastUnit(select);
 
 ask();
@@ -74,12 +76,8 @@ async function ask() {
     jobs.changed();
   } catch (error) {
     if (error.name === "AbortError") return;
-    complain([error.message, ...(error.faults || []).map((one) => one.detail)].filter(unlike).join(" "), (error.faults || []).map((one) => one.pointer.slice(1)));
+    complain(wordsOf(error), (error.faults || []).map((one) => one.pointer.slice(1)));
   }
-}
-
-function unlike(words, n, all) {
-  return words && all.indexOf(words) === n;
 }
 
 /** Say what cannot be answered, at the field that it concerns. */
@@ -132,6 +130,7 @@ function lastUnit(select) {
       if (Number.isFinite(again)) field.value = String(Number(again.toPrecision(6)));
     }
     before = after;
-    ask();
+    // a change inside the form reaches the form by itself
+    if (!form.contains(select)) ask();
   });
 }

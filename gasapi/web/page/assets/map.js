@@ -84,6 +84,11 @@ function boundary(picture, inside, { boundary: line, margin, units, answer, pres
   const shift = y(0) - y(margin / units.temperature.scale);
   inside.append(svg("path", { class: "near", d: path(points.map(([px, py]) => [px, py - shift])) }));
   inside.append(svg("path", { class: "dew", d: path(points) }));
+  const nearest = points.findLast(([px, py]) => px > LEFT + 90 && px < width - RIGHT - 4 && py - shift > TOP + 16 && py - shift < floor - 8);
+  if (nearest) {
+    const words = `warned within ${brief(margin, 3)} K`;
+    inside.append(svg("text", { class: "quiet halo", x: nearest[0] - 6, y: nearest[1] - shift - 7, "text-anchor": "end" }, words));
+  }
   for (const point of pointsOf(line)) {
     const [px, py] = [x(point.pressure), y(point.temperature)];
     if (px < LEFT || px > width - RIGHT || py < TOP || py > floor) continue;
@@ -95,7 +100,7 @@ function boundary(picture, inside, { boundary: line, margin, units, answer, pres
   }
   const shown = points.filter(([px, py]) => px > LEFT + 30 && px < width - RIGHT - 70 && py > TOP + 20 && py < floor - 24);
   const middle = shown[Math.floor(shown.length / 3)];
-  if (middle) picture.append(svg("text", { class: "dew-text halo", x: middle[0] + 10, y: middle[1] + 20 }, "dew line"));
+  if (middle) picture.append(svg("text", { class: "dew-text halo", x: middle[0] + 10, y: middle[1] + 20 }, "dew line, wet below"));
 }
 
 /** Return the named points of a boundary: every member, at any depth, that has a pressure and a temperature of its own. */
