@@ -16,11 +16,16 @@ from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.incipient import IncipientPhase, Points
 from gasapi.engine.protocol import Branch, Status
 
-__all__ = ["Boundary", "NamedPoint", "position_of", "trace_boundary", "wilson_start"]
+__all__ = ["HIGHEST", "Boundary", "NamedPoint", "position_of", "trace_boundary", "wilson_start"]
 
 _LOWEST_PRESSURE: Final = 1e3
+HIGHEST: Final = "the highest pressure was reached"
+
 _START_PRESSURES: Final = (2e5, 5e4, 1e4, 1e3, 7e5, 2e6, 6e6, 2e7, 6e7)
 _HIGHEST_PRESSURE: Final = 1e8
+_ABOVE: Final = 0.2
+"""How far above the cricondenbar, in ln p, a bubble line that rises again is followed."""
+
 _WEIGHT: Final = 3.0
 _FIRST_STEP: Final = 0.8
 _LONGEST_STEP: Final = 1.6
@@ -237,7 +242,7 @@ def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperat
     trace.add(first)
     reached = _follow_down(system, trace, lowest_temperature)
     start_log_p = trace.log_pressure[0]
-    highest = start_log_p
+    highest, fallen = start_log_p, False
     step = _FIRST_STEP
     packed = float(system.energy.close_packing(system.fractions[None])[0])
     feed_cold = float(system.energy.lowest_temperature(system.fractions[None])[0])
@@ -277,13 +282,14 @@ def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperat
         log_p = trace.log_pressure[-1]
         if log_p < start_log_p:
             return trace, True, "back at the lowest pressure", reached
-        if log_p > trace.log_pressure[-2] and trace.log_pressure[-2] < highest - 0.02:
-            return trace, False, "the pressure rises again on the bubble line", reached
+        fallen = fallen or trace.log_pressure[-2] < highest - 0.02
+        if fallen and log_p > highest + _ABOVE:
+            return trace, False, HIGHEST, reached
         highest = max(highest, log_p)
         if points.unknown[0, k + 1] < coldest:
             return trace, False, "the lowest temperature was reached", reached
         if log_p > math.log(_HIGHEST_PRESSURE):
-            return trace, False, "the highest pressure was reached", reached
+            return trace, False, HIGHEST, reached
         if math.exp(s) > 0.97 * packed:
             return trace, False, "close packing was reached", reached
         worst = float(moved.max())

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from scipy.interpolate import CubicSpline, PchipInterpolator
 
 from gasapi.engine.elementary import Array, exp
-from gasapi.engine.phase.boundary import Boundary, NamedPoint, position_of
+from gasapi.engine.phase.boundary import HIGHEST, Boundary, NamedPoint, position_of
 from gasapi.engine.phase.energy import Floats
 from gasapi.engine.phase.region import Region
 from gasapi.engine.phase.table import CubicTable
@@ -29,6 +29,7 @@ _KNOTS: Final = 160
 _FINE: Final = 8
 _STRETCH_KNOTS: Final = 96
 _LEAST_INVERSE: Final = 1e-4
+_HIGH: Final = math.log(2e7)
 _KELVIN: Final = 1e-7
 _LOG: Final = 1e-10
 
@@ -90,14 +91,7 @@ class BoundaryCurve:
         w[top] = 0.0
         self.log_first = round(float(lp[0]), 10)
         self.log_last = round(float(used[-1]), 10) if fall > 1 and not dew_only else math.inf
-        self.last_temperature = -math.inf if dew_only else float(t[top + fall - 1])
-
-        # a bubble line that was left while its pressure rose may come back above at lower temperatures; without a critical
-        # point the far side is no bubble line, but where a second liquid appears
-        self.trusted_from = self.last_temperature if b.critical is not None else math.inf
-        if b.complete and b.critical is not None:
-            self.trusted_from = -math.inf
-
+        self.log_end = self.log_top if dew_only or cut else float(lp[-1])
         hot = _node(b, b.cricondentherm, t)
         if _falling(t[: hot + 1][::-1]) != hot + 1:
             raise OddBoundary
@@ -108,6 +102,13 @@ class BoundaryCurve:
         u[hot] = 0.0
         self.coldest_first = float(t[0])
         self.coldest_top = float(t[hot + fall_hot - 1]) if fall_hot > 1 and not dew_only else math.inf
+        # what lies below the coldest point of the far side: liquid under a bubble line that was followed to its end, two phases
+        # under a line that rises without end, and else what a direct test says
+        self._colder = DIRECT
+        if dew_only or cut or b.end == HIGHEST or (not self.closed and not b.complete and self.log_end > _HIGH):
+            self._colder = _TWO_PHASE
+        elif b.complete and b.critical is not None:
+            self._colder = _LIQUID
         self.inverse_first = 1.0 / self.coldest_first
         self.inverse_slope = -float(b.temperature_slope[0] / b.pressure_slope[0]) / self.coldest_first
         if not self.inverse_slope < 0.0:
@@ -135,7 +136,9 @@ class BoundaryCurve:
         :param lp: ln p
         """
         if lp > self.log_top:
-            return (_GAS if self.closed and t >= self.trusted_from else DIRECT), math.nan, math.nan
+            if not self.closed:
+                return DIRECT, math.nan, math.nan
+            return self._far_side_float(t, lp), math.nan, math.nan
         if lp < self.log_first:
             if self.ends_with_equation:
                 return _GAS, math.nan, math.nan
@@ -148,44 +151,70 @@ class BoundaryCurve:
         up = self.by_pressure(-w)
         if t > up:
             return _GAS, up, math.nan
+        state = self._far_side_float(t, lp)
         low = self.by_pressure(w) if lp >= self.log_last else math.nan
-        if low == low:
-            beyond = _LIQUID if t >= self.trusted_from else DIRECT
-            return (beyond if t < low else _TWO_PHASE), up, low
-        return (_TWO_PHASE if t >= self.last_temperature else DIRECT), up, low
+        if state == _TWO_PHASE:
+            # a bubble line that comes back at lower temperatures has its first end elsewhere
+            return state, up, low if t >= low else math.nan
+        # beyond the far side below the cricondenbar
+        return (_LIQUID if state == _GAS else state), up, low
+
+    def _far_side_float(self, t: float, lp: float) -> int:
+        """Return two-phase below the line of the far side, gas (or whatever one phase is called there) above it."""
+        if t >= self.hottest:
+            return _GAS
+        if t >= self.coldest_top:
+            return _TWO_PHASE if lp < self.by_temperature(math.sqrt(self.hottest - t)) else _GAS
+        if self._colder == _TWO_PHASE and lp > self.log_end:
+            return DIRECT
+        return _GAS if self._colder == _LIQUID else self._colder
 
     def state_block(self, t: Array, lp: Array) -> tuple[NDArray[np.int8], Array, Array]:
         """Return the same for rows, each of shape (n,)."""
         w = np.sqrt(np.maximum(self.log_top - lp, 0.0))
         up = self.by_pressure(-w)
         low = np.full(t.size, np.nan)
-        known = np.flatnonzero((lp >= self.log_last) & ~(t > up))
-        low[known] = self.by_pressure(w.take(known))
-        below = np.full(t.size, _TWO_PHASE, dtype=np.int8)
-        beyond = t < low
-        below[beyond] = DIRECT
-        below[beyond & (t >= self.trusted_from)] = _LIQUID
         before = lp < self.log_first
-        below[(low != low) & ~before & ~(t >= self.last_temperature)] = DIRECT
         if before.any():
             if self.ends_with_equation:
-                # nothing is below NaN
                 up = np.where(before, np.nan, up)
-                below[before] = _GAS
             else:
                 rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
                 up = np.where(before, 1.0 / np.where(rest > _LEAST_INVERSE, rest, _LEAST_INVERSE), up)
-        state = np.where(t > up, np.int8(_GAS), below)
+        above = lp > self.log_top
+        state = np.full(t.size, _GAS, dtype=np.int8)
+        if above.any():
+            up = np.where(above, np.nan, up)
+            if not self.closed:
+                state[above] = DIRECT
         if self._lost_below:
             state[before & (t <= self.coldest_first)] = DIRECT
-        above = lp > self.log_top
-        if above.any():
-            state[above] = DIRECT
-            if self.closed:
-                state[above & (t >= self.trusted_from)] = _GAS
-            up = np.where(above, np.nan, up)
-            low = np.where(above, np.nan, low)
+        else:
+            state[before & (t <= up)] = _TWO_PHASE
+        rows = np.flatnonzero(~before & ((above & self.closed) | (t <= up)))
+        if rows.size:
+            here, lp_here, within = t.take(rows), lp.take(rows), ~above.take(rows)
+            far = self._far_side_block(here, lp_here)
+            known = np.flatnonzero(within & (lp_here >= self.log_last))
+            bubble = np.full(rows.size, np.nan)
+            bubble[known] = self.by_pressure(w.take(rows[known]))
+            split = far == _TWO_PHASE
+            bubble[split & ~(here >= bubble)] = math.nan
+            far[within & (far == _GAS)] = _LIQUID
+            state[rows] = far
+            low[rows] = bubble
         return state, up, low
+
+    def _far_side_block(self, t: Array, lp: Array) -> NDArray[np.int8]:
+        cool = t < self.hottest
+        u = np.sqrt(np.where(cool, self.hottest - t, 0.0))
+        state = np.where(cool & (lp < self.by_temperature(u)), np.int8(_TWO_PHASE), np.int8(_GAS))
+        cold = cool & ~(t >= self.coldest_top)
+        if cold.any():
+            state[cold] = _GAS if self._colder == _LIQUID else self._colder
+            if self._colder == _TWO_PHASE:
+                state[cold & (lp > self.log_end)] = DIRECT
+        return state
 
     def distance_float(self, t: float, p: float) -> tuple[float, bool]:
         """Return how far the pressure is from the nearer line at this temperature, and whether it is between two lines.

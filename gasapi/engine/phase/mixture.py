@@ -42,7 +42,7 @@ from gasapi.engine.phase.flash import FlashResult, two_phase_flash
 from gasapi.engine.phase.region import Region
 from gasapi.engine.phase.stability import Stability, StabilityResult, StabilityTest
 from gasapi.engine.phase.table import CubicTable
-from gasapi.engine.phase.water import WATER, LiquidWater, frost_excess, water_line
+from gasapi.engine.phase.water import WATER, LiquidWater, frost_excess, is_dry, water_line
 from gasapi.engine.protocol import Branch, Fluid
 
 __all__ = [
@@ -120,7 +120,7 @@ def _margin_temperature(t: float, region: int, dew: float, up: float, low: float
     rise = t - low
     if region == _LIQUID:
         # a liquid without a bubble line at this pressure has no margin to the gas
-        return rise if rise == rise else margin if up == up else math.nan
+        return (rise if rise < 0.0 else 0.0) if rise == rise else margin if up == up else math.nan
     if region == _TWO_PHASE and rise < -margin:
         # never above zero, though the curves meet only to their own accuracy
         return -rise if rise > 0.0 else 0.0
@@ -384,12 +384,15 @@ class MixturePhase:
         # where the gas condenses first, its metastable water line is of no use
         good = line.found & ~(line.temperature < dew - _DRY_FLOOR)
         count = _leading(good, line.temperature)
-        if count < _FEWEST:
-            self._water_unsure = True
-        else:
+        if count >= _FEWEST:
             self._water_gas = WaterCurve(log_p[:count], line.temperature[:count])
-            # where the line leaves the gas, the gas has to condense before water does, up to the cricondenbar
-            self._water_unsure = count < _WATER_NODES and not line.temperature[count - 1] < dew[count - 1] + 2.0
+        else:
+            count = 0
+        # where no line was kept, the gas has to condense before water does
+        rest = np.flatnonzero((np.arange(_WATER_NODES) >= count) & (log_p <= self._log_top) & np.isfinite(dew))
+        self._water_unsure = not self._curves or not bool(
+            is_dry(self.energy, self.fluid, z, dew[rest] + 0.5, log_p[rest], liquid).all()
+        )
         if count < _WATER_NODES and self._closed:
             line = water_line(self.energy, self.fluid, z, log_p, Branch.LIQUID, liquid)
             back = _leading(line.found[::-1], line.temperature[::-1])
@@ -692,7 +695,7 @@ class MixturePhase:
         if rows.size:
             rise = t.take(rows) - low.take(rows)
             here, above = margin.take(rows), up.take(rows)
-            in_liquid = np.where(rise == rise, rise, np.where(above == above, here, math.nan))
+            in_liquid = np.where(rise == rise, np.where(rise < 0.0, rise, 0.0), np.where(above == above, here, math.nan))
             between = np.where(rise < -here, np.where(rise > 0.0, -rise, 0.0), here)
             margin[rows] = np.where(region.take(rows) == _LIQUID, in_liquid, between)
         margin[region == _UNKNOWN] = math.nan

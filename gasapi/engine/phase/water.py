@@ -27,6 +27,7 @@ __all__ = [
     "LiquidWater",
     "WaterLine",
     "frost_excess",
+    "is_dry",
     "supercooled_vapour_pressure",
     "water_line",
 ]
@@ -45,6 +46,8 @@ _PUREST: Final = 0.85
 _MOST_STEPS: Final = 16
 _LONGEST_STEP: Final = 0.06
 _DONE: Final = 1e-9
+_DRYNESS: Final = 0.03
+"""By how much ln f of water in the gas has to be below that of liquid water: solutes in it take some of it away."""
 
 
 class WaterLine(NamedTuple):
@@ -185,6 +188,25 @@ def water_line(
     if warm.size:
         t[warm] = _with_solutes(energy, fractions, water, log_pressure[warm], t[warm], density[warm])
     return WaterLine(log_pressure, np.where(found, t, np.nan), found)
+
+
+def is_dry(
+    energy: MixtureEnergy, fluid: Fluid, fractions: Floats, temperature: Floats, log_pressure: Floats, liquid: LiquidWater
+) -> NDArray[np.bool_]:
+    """Return for gaseous states whether pure liquid water would evaporate into them, shape (m,).
+
+    :param temperature: K, shape (m,)
+    :param log_pressure: ln p, shape (m,)
+    """
+    if temperature.size == 0:
+        return np.ones(0, dtype=bool)
+    water, pressure = liquid.index, np.exp(log_pressure)
+    root = fluid.density(temperature, pressure, Branch.GAS)
+    feed = np.broadcast_to(fractions, (temperature.size, fractions.size))
+    vapour, _ = _log_fugacity(energy, temperature, root.density, feed, water)
+    value, _, good = liquid.log_fugacity(temperature, pressure)
+    hot = temperature > float(energy.critical_temperatures[water])
+    return hot | (good & (root.status == Status.CONVERGED) & (vapour < value - _DRYNESS))
 
 
 def _with_solutes(

@@ -205,10 +205,11 @@ def test_outline():
 
 
 def test_a_direct_test_stands_in_where_the_curves_end():
-    """A cold state beyond the traced bubble line is judged by itself, without dew margins in pressure."""
+    """A cold dense state beyond the traced bubble line is judged by itself, without a margin in pressure."""
     phase = gerg_phase(NATURAL_GAS)
-    verdict = phase.at(110.0, 3e5)
+    t, p = 85.0, 6e7
+    verdict = phase.at(t, p)
     assert verdict.flags & MixtureFlag.DIRECT
     assert verdict.margin_pressure is None
-    expected = phase.stability(110.0, 3e5).verdict
+    expected = phase.stability(t, p).verdict
     assert verdict.region == {Stability.STABLE: Region.LIQUID, Stability.UNSTABLE: Region.TWO_PHASE}[expected]

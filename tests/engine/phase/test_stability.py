@@ -104,7 +104,7 @@ def test_no_false_gas_in_ten_thousand_states():
     ],
 )
 def test_just_inside_the_water_dew_point(gas, pressure):
-    """Half a kelvin below the water dew point a state is unstable against an aqueous trial, half a kelvin above it is stable."""
+    """Half a kelvin below the water dew point an aqueous trial splits the state, half a kelvin above it none does."""
     phase = gerg_phase(gas)
     verdict = phase.at(450.0, pressure)
     assert verdict.dew_kind == DewKind.WATER
