@@ -423,6 +423,15 @@ _JOBS: Final = (
         {},
     ),
     _Job(
+        "phase-boundary",
+        "where a gas begins to condense",
+        "methane=0.85 ethane=0.08 n-butane=0.07 --unit pressure=bar --unit temperature=degC",
+        _no_options,
+        _no_members,
+        {},
+        is_state=False,
+    ),
+    _Job(
         "lookup-table",
         "a small table for a controller",
         "nitrogen -p 1 60 bar -t -20 80 degC --tolerance 0.001 --format st > nitrogen.st",
@@ -464,6 +473,13 @@ def _result_rows(member: str, value: Any, unit: str, units: Mapping[str, str]) -
             difference = item["relative_difference"]
             by = "" if difference is None else f", {100.0 * difference:+.3g} %"
             yield label, f"{item['id']}: {_value(item['density'], units['density'])}{by}{toxic}"
+    elif isinstance(value, dict):
+        for name, inner in value.items():
+            if isinstance(inner, dict):
+                parts = (f"{part} {_value(number, units[part])}" for part, number in inner.items())
+                yield name.replace("_", " "), ", ".join(parts)
+            else:
+                yield from _result_rows(f"{member}_{name}", inner, "", units)
     elif isinstance(value, list) and value and isinstance(value[0], list):
         for row in value:
             yield label, "  ".join(f"{x:.8g}" for x in row)

@@ -31,6 +31,7 @@ PAGES: Final = (
     Page(
         "comparison", "Comparison of equations", "How wrong is the ideal gas here, and is the choice of equation the problem?"
     ),
+    Page("phase-boundary", "Phase boundary", "Where does this gas begin to condense?"),
     Page("lookup-table", "Table for a controller", "How does a controller that cannot call a service get the density?"),
 )
 """The pages in reading order."""

@@ -14,6 +14,7 @@ __all__ = [
     "FractionFromDensityAnswerSchema",
     "LookupTableAnswerSchema",
     "MolarMassAnswerSchema",
+    "PhaseBoundaryAnswerSchema",
     "PressureDecayAnswerSchema",
     "VesselAnswerSchema",
 ]
@@ -199,3 +200,47 @@ class LookupTableAnswerSchema(JobAnswerSchema):
     """The answer to a table."""
 
     result = _object(LookupTableResultSchema)
+
+
+class BoundaryPointSchema(Schema):
+    """A named point of a boundary."""
+
+    temperature = fields.Float(required=True)
+    pressure = fields.Float(required=True)
+    density = _maybe("Of the gas at the triple point; else of the fluid.")
+
+
+class BoundaryLineSchema(Schema):
+    """A line of states."""
+
+    temperature = fields.List(fields.Float(), required=True)
+    pressure = fields.List(fields.Float(), required=True)
+
+
+class PhaseBoundaryResultSchema(Schema):
+    """The dew line from its lowest pressure and, for a mixture, the bubble line back; the saturation curve of a pure gas."""
+
+    temperature = _numbers("Along the boundary.")
+    pressure = _numbers("Along the boundary.")
+    points = fields.Dict(
+        keys=fields.String(),
+        values=fields.Nested(BoundaryPointSchema),
+        required=True,
+        allow_none=True,
+        metadata={"description": "critical, triple, cricondentherm and cricondenbar, as far as there are such."},
+    )
+    water_dew = fields.Nested(
+        BoundaryLineSchema,
+        required=True,
+        allow_none=True,
+        metadata={"description": "Where liquid water forms; null for a gas without water."},
+    )
+    complete = fields.Boolean(
+        required=True, allow_none=True, metadata={"description": "Whether the line was followed back to its lowest pressure."}
+    )
+
+
+class PhaseBoundaryAnswerSchema(JobAnswerSchema):
+    """The answer to a phase boundary."""
+
+    result = _object(PhaseBoundaryResultSchema)

@@ -14,12 +14,14 @@ from gasapi.service.comparison import ComparisonAnswer
 from gasapi.service.flow import FlowAnswer, FlowQuestion
 from gasapi.service.fraction_from_density import FractionFromDensityAnswer, FractionFromDensityQuestion
 from gasapi.service.molar_mass import MolarMassAnswer, MolarMassQuestion
+from gasapi.service.phase_boundary import Line, PhaseBoundaryAnswer
 from gasapi.service.pressure_decay import PressureDecayAnswer, PressureDecayQuestion
 from gasapi.service.questions import GasSpec, StateQuestion
 from gasapi.service.state import Answered
 from gasapi.service.vessel import Content, VesselAnswer, VesselQuestion
 from gasapi.units import UnitMap
 from gasapi.web.answers import state_members
+from gasapi.web.job_questions import PhaseBoundaryAsked
 from gasapi.web.problems import pointer
 from gasapi.web.questions import Asked
 
@@ -29,6 +31,7 @@ __all__ = [
     "fraction_from_density_members",
     "job_members",
     "molar_mass_members",
+    "phase_boundary_members",
     "pressure_decay_members",
     "vessel_members",
 ]
@@ -186,3 +189,29 @@ def comparison_members(question: StateQuestion, units: UnitMap, answer: Comparis
         for m in answer.models
     ]
     return job_members(answer.state, units, {"models": models})
+
+
+def phase_boundary_members(question: PhaseBoundaryAsked, units: UnitMap, answer: PhaseBoundaryAnswer) -> Members:
+    """Return the answer to a phase boundary; arrays are null where no equation tells it."""
+    boundary = answer.boundary
+
+    def line(of: Line) -> Members:
+        return {
+            "temperature": [units.temperature.from_si(t) for t in of.temperature],
+            "pressure": [units.pressure.from_si(p, question.ambient) for p in of.pressure],
+        }
+
+    result: Members = {"temperature": None, "pressure": None, "points": None, "water_dew": None, "complete": None}
+    if boundary is not None:
+        result |= line(boundary.line)
+        result["points"] = {
+            name: {
+                "temperature": units.temperature.from_si(temperature),
+                "pressure": units.pressure.from_si(pressure, question.ambient),
+                "density": None if density is None else units.density.from_si(density),
+            }
+            for name, (temperature, pressure, density) in boundary.points
+        }
+        result["water_dew"] = line(boundary.water) if boundary.water.temperature else None
+        result["complete"] = boundary.complete
+    return job_members(answer.state, units, result)

@@ -172,6 +172,14 @@ JOB_OPERATIONS: Final[tuple[Operation, ...]] = (
         ),
     ),
     _job(
+        "phase-boundary",
+        "traceBoundary",
+        "Where a gas begins to condense",
+        "The saturation curve of a pure gas, dew and bubble line of a mixture, the water line of a wet one, and named points.",
+        questions.PhaseBoundarySchema,
+        answers.PhaseBoundaryAnswerSchema,
+    ),
+    _job(
         "lookup-table",
         "makeTable",
         "A small table for a controller",

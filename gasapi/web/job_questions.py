@@ -38,6 +38,8 @@ __all__ = [
     "LookupTableAsked",
     "LookupTableReader",
     "MolarMassReader",
+    "PhaseBoundaryAsked",
+    "PhaseBoundaryReader",
     "PressureDecayReader",
     "Readings",
     "VesselReader",
@@ -58,6 +60,11 @@ _BOUNDS: Final = {
     "amount_flow": (1e-30, 1e15),
     "throughput": (1e-30, 1e15),
 }
+
+
+# where auto chooses the equation of a gas as a whole
+_ROOM_PRESSURE: Final = 101325.0
+_ROOM_TEMPERATURE: Final = 293.15
 
 
 class AskedJob(NamedTuple, Generic[Question]):
@@ -526,3 +533,24 @@ class LookupTableReader(JobReader[LookupTableAsked]):
             return ("pressure",) if isinstance(error, RangeNotOnePhase) else find_other(error)
 
         return find
+
+
+class PhaseBoundaryAsked(NamedTuple):
+    """The gas at room conditions, and the ambient pressure under gauge pressures of the answer, Pa."""
+
+    state: StateQuestion
+    ambient: float
+
+
+class PhaseBoundaryReader(JobReader[PhaseBoundaryAsked]):
+    """Reads questions for phase boundaries."""
+
+    schema = job_schemas.PhaseBoundarySchema()
+
+    def check(self, readings: Readings) -> None:
+        """There are no readings."""
+
+    def question(self, readings: Readings) -> PhaseBoundaryAsked:
+        """Return the gas."""
+        ambient, assumed = readings.ambient()
+        return PhaseBoundaryAsked(readings.state_at(_ROOM_PRESSURE, _ROOM_TEMPERATURE, assumed), ambient)

@@ -13,6 +13,7 @@ __all__ = [
     "FractionFromDensitySchema",
     "LookupTableSchema",
     "MolarMassSchema",
+    "PhaseBoundarySchema",
     "PressureDecaySchema",
     "VesselSchema",
 ]
@@ -131,3 +132,7 @@ class LookupTableSchema(JobSchema):
     tolerance = job_fields.Tolerance(required=True, description="The largest relative error of interpolation.")
     format = fields.Choice(("json", "csv", "st"), default="json", description="st: IEC 61131-3 Structured Text.")
     name = job_fields.Identifier(description="The name of the function block; left out: made of property and gas.")
+
+
+class PhaseBoundarySchema(JobSchema):
+    """The phase boundary of a gas."""

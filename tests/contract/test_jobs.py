@@ -520,3 +520,37 @@ def test_numbers_stay_where_things_exist(refuse):
     assert "/density" in refuse("molar-mass", density=1e300)
     assert "/leak_limit/value" in refuse("pressure-decay", leak_limit={"value": 1e-300, "unit": "kg/s"})
     assert "/meter/design_density" in refuse("flow", meter={"principle": "volumetric", "design_density": 1e-300})
+
+
+def test_phase_boundary_members_and_units(client):
+    """Arrays of one length, named points, gauge pressures with their ambient, and the envelope of every job."""
+    units = {"pressure": "barg", "temperature": "degC"}
+    question = {"gas": "propane", "units": units, "ambient_pressure": 100000}
+    answer = client.post("/v1/phase-boundary", json=question).get_json()
+    plain = client.post("/v1/phase-boundary", json={"gas": "propane"}).get_json()
+    assert ENVELOPE == list(answer)
+    result = answer["result"]
+    assert len(result["temperature"]) == len(result["pressure"]) > 50
+    for p, gauge in zip(plain["result"]["pressure"], result["pressure"], strict=True):
+        assert (p - 100000.0) / 1e5 == pytest.approx(gauge, abs=1e-12)
+    critical, si = result["points"]["critical"], plain["result"]["points"]["critical"]
+    assert si["temperature"] - 273.15 == pytest.approx(critical["temperature"], abs=1e-9)
+    # the normal boiling point of propane is -42.1 degC in handbooks (from memory)
+    at = min(range(len(result["pressure"])), key=lambda i: abs(plain["result"]["pressure"][i] - 101325.0))
+    assert -42.1 == pytest.approx(result["temperature"][at], abs=3.0)
+
+
+def test_phase_boundary_of_a_mixture(client):
+    """Named points and the water dew line of a wet gas."""
+    gas = {"fractions": {"methane": 0.949, "ethane": 0.05, "water": 0.001}}
+    result = client.post("/v1/phase-boundary", json={"gas": gas}).get_json()["result"]
+    assert {"cricondentherm", "cricondenbar"} <= result["points"].keys()
+    assert len(result["water_dew"]["temperature"]) == len(result["water_dew"]["pressure"]) > 0
+
+
+def test_phase_boundary_refusals(client):
+    """A state is no member of it."""
+    response = client.post("/v1/phase-boundary", json={"gas": "propane", "pressure": 1e5})
+    assert 422 == response.status_code
+    assert ["/pressure"] == [fault["pointer"] for fault in response.get_json()["errors"]]
+    assert 422 == client.post("/v1/phase-boundary", json={}).status_code

@@ -1,7 +1,7 @@
 """The worked examples of the guide: compared with the service, or written from it.
 
-``python tests/support/guide_examples.py`` writes the answers of the service into the pages. Which members of an answer a page
-shows stands in ``SHOWN``; everything else is left out. Numbers are written with six digits.
+``python tests/support/guide_examples.py`` writes the answers of the service into the pages. ``shown`` says which
+members of an answer a page shows. Numbers are written with six digits.
 """
 
 from __future__ import annotations
@@ -24,6 +24,8 @@ def shown(answer: dict[str, Any]) -> dict[str, Any]:
     result = dict(answer["result"])
     if result.get("candidates"):
         result["candidates"] = [{name: c[name] for name in _CANDIDATE} for c in result["candidates"]]
+    if "points" in result:
+        result = {"points": result["points"], "complete": result["complete"]}
     return {"result": result, "quality": {"level": answer["quality"]["level"]}}
 
 

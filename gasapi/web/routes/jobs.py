@@ -12,14 +12,16 @@ from flask import Blueprint, Response, request
 
 from gasapi.errors import GasapiError
 from gasapi.service.comparison import answer_comparison
+from gasapi.service.context import Context
 from gasapi.service.flow import answer_flow
 from gasapi.service.fraction_from_density import answer_fraction_from_density
 from gasapi.service.molar_mass import answer_molar_mass
+from gasapi.service.phase_boundary import PhaseBoundaryAnswer, answer_phase_boundary
 from gasapi.service.pressure_decay import answer_pressure_decay
 from gasapi.service.vessel import answer_vessel
 from gasapi.web import job_answers, job_questions
 from gasapi.web.body import read_body, require_json
-from gasapi.web.job_questions import JobReader
+from gasapi.web.job_questions import JobReader, PhaseBoundaryAsked
 from gasapi.web.negotiation import JSON, accepted
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid, pointer
@@ -44,6 +46,10 @@ class Job(NamedTuple):
     members: Callable[..., dict[str, Any]]
 
 
+def _answer_phase_boundary(context: Context, question: PhaseBoundaryAsked) -> PhaseBoundaryAnswer:
+    return answer_phase_boundary(context, question.state)
+
+
 JOBS = (
     Job("flow", job_questions.FlowReader, answer_flow, job_answers.flow_members),
     Job("vessel", job_questions.VesselReader, answer_vessel, job_answers.vessel_members),
@@ -56,6 +62,12 @@ JOBS = (
     ),
     Job(
         "molar-mass", job_questions.MolarMassReader, partial(answer_molar_mass, pause=give_way), job_answers.molar_mass_members
+    ),
+    Job(
+        "phase-boundary",
+        job_questions.PhaseBoundaryReader,
+        _answer_phase_boundary,
+        job_answers.phase_boundary_members,
     ),
     Job("comparison", job_questions.ComparisonReader, answer_comparison, job_answers.comparison_members),
 )
