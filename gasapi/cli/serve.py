@@ -1,16 +1,24 @@
-"""``gasapi serve``: run the service under gunicorn, on loopback unless told otherwise."""
+"""``gasapi serve``: run the service under gunicorn, on loopback unless told otherwise.
+
+The master process imports the program and reads its data once, so that a worker that takes the place of another is ready in
+a fraction of a second. SIGHUP makes it read the site file and the token file again and lets new workers take over.
+"""
 
 from __future__ import annotations
 
 import argparse
+import atexit
 import ipaddress
+import logging
 import os
 import shutil
 import sys
 import tempfile
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
+from gasapi.cli.holdings import Holdings
 from gasapi.errors import GasapiError
 from gasapi.settings import Settings
 
@@ -73,19 +81,16 @@ def _run(options: argparse.Namespace) -> int:
     for name in _ONE_THREAD:
         os.environ.setdefault(name, "1")
     try:
+        folder = _own_metrics_folder()
         settings = Settings.from_environment()
+        if options.request_log:
+            settings = replace(settings, request_log=True)
         _check_access(options.host or settings.host, options.open or settings.open_access, settings)
-        _check_data(settings)
+        holdings = Holdings(settings)
     except GasapiError as error:
         print(f"gasapi serve: {error}", file=sys.stderr)
         return 2
-    if options.request_log:
-        os.environ["GASAPI_REQUEST_LOG"] = "1"
-    folder = None
-    if settings.metrics_folder is None:
-        folder = Path(tempfile.mkdtemp(prefix="gasapi-metrics-"))
-        os.environ["PROMETHEUS_MULTIPROC_DIR"] = str(folder)
-    _serve(_gunicorn_settings(options, settings), folder)
+    _serve(_gunicorn_settings(options, settings), holdings, settings, folder)
     return 0
 
 
@@ -94,24 +99,26 @@ class _Refused(GasapiError):
 
 
 def _check_access(host: str, open_access: bool, settings: Settings) -> None:
-    if settings.token_file is not None:
-        from gasapi.web.tokens import TokenList
-
-        TokenList.from_file(settings.token_file)
-    elif not open_access and not is_loopback(host):
+    if settings.token_file is None and not open_access and not is_loopback(host):
         raise _Refused(
             f"{host} can be reached from other machines: name a file of tokens in GASAPI_TOKEN_FILE (gasapi token makes one), "
             "or say --open to answer everyone"
         )
 
 
-def _check_data(settings: Settings) -> None:
-    """Read the site file now, so that a fault in it is told before any worker starts."""
-    if settings.site_file is not None:
-        from gasapi.gases.catalogue import Catalogue
-        from gasapi.gases.site import load_site
+def _own_metrics_folder() -> Path | None:
+    """Return a folder made for the counters, None where the environment names one; the client library looks when imported."""
+    if os.environ.get("PROMETHEUS_MULTIPROC_DIR"):
+        return None
+    folder = Path(tempfile.mkdtemp(prefix="gasapi-metrics-"))
+    os.environ["PROMETHEUS_MULTIPROC_DIR"] = str(folder)
+    atexit.register(_remove, folder, os.getpid())
+    return folder
 
-        load_site(settings.site_file, Catalogue.load())
+
+def _remove(folder: Path, owner: int) -> None:
+    if os.getpid() == owner:
+        shutil.rmtree(folder, ignore_errors=True)
 
 
 def _cores() -> int:
@@ -138,13 +145,30 @@ def _gunicorn_settings(options: argparse.Namespace, settings: Settings) -> dict[
     }
 
 
-def _serve(server_settings: dict[str, Any], metrics_folder: Path | None) -> None:
+def _serve(server_settings: dict[str, Any], holdings: Holdings, settings: Settings, metrics_folder: Path | None) -> None:
     """Run gunicorn in this process until it is told to stop."""
+    import gunicorn.http.wsgi
     from gunicorn.app.base import BaseApplication
     from prometheus_client.multiprocess import mark_process_dead
 
+    gunicorn.http.wsgi.SERVER = "gasapi"
+    told: list[str] = []
+
     def child_exit(server: Any, worker: Any) -> None:
         mark_process_dead(worker.pid)
+
+    def worker_exit(server: Any, worker: Any) -> None:
+        # the interpreter would take locks apart that the event loop has put in place of its own, and complain of it
+        if worker.booted:
+            logging.shutdown()
+            sys.stdout.flush()
+            sys.stderr.flush()
+            os._exit(0)
+
+    def on_reload(server: Any) -> None:
+        for words in told:
+            server.log.error("the site file or the token file is not taken, all stays as it was: %s", words)
+        told.clear()
 
     def on_exit(server: Any) -> None:
         if metrics_folder is not None:
@@ -153,9 +177,16 @@ def _serve(server_settings: dict[str, Any], metrics_folder: Path | None) -> None
     class Server(BaseApplication):
         """gunicorn with settings in place of a command line."""
 
+        started = False
+
         def load_config(self) -> None:
-            """Take the settings."""
-            for name, value in {**server_settings, "child_exit": child_exit, "on_exit": on_exit}.items():
+            """Take the settings; on SIGHUP this is called again."""
+            if self.started:
+                words = holdings.read_again()
+                told.extend([] if words is None else [words])
+            self.started = True
+            hooks = {"child_exit": child_exit, "worker_exit": worker_exit, "on_exit": on_exit, "on_reload": on_reload}
+            for name, value in {**server_settings, **hooks}.items():
                 self.cfg.set(name, value)
 
         def load(self) -> Any:
@@ -164,7 +195,7 @@ def _serve(server_settings: dict[str, Any], metrics_folder: Path | None) -> None
 
             from gasapi.app import create_app
 
-            app = create_app()
+            app = create_app(settings, holdings.context, holdings.tokens)
             # what was built now stays; the collector need not look through it again and again
             gc.collect()
             gc.freeze()

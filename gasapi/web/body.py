@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Any
 
 from gasapi.web.negotiation import JSON, content_type
 from gasapi.web.problems import Problem
+from gasapi.web.turns import TICKET
 
 __all__ = ["Environ", "announced_length", "read_body", "require_json"]
 
@@ -24,18 +26,20 @@ def announced_length(environ: Environ) -> int | None:
 
 
 def read_body(environ: Environ, limit: int) -> bytes:
-    """Return the body of a request.
+    """Return the body of a request; a large question waits for its turn here, once the body has come.
 
     :param limit: bytes that it may have
     :raises Problem: 400 where the body breaks off or its chunks are broken; 408 where it does not come; 413 where it is longer
-        than the limit
+        than the limit; 503 where there are too many large questions
     """
     length = announced_length(environ)
+    ticket = environ.get(TICKET)
+    hold = ticket.hold if ticket is not None else _hold_all
     try:
-        return (
-            _read_announced(environ["wsgi.input"], length, limit)
+        body = (
+            _read_announced(environ["wsgi.input"], length, limit, hold)
             if length is not None
-            else _read_chunks(environ["wsgi.input"], limit)
+            else _read_chunks(environ["wsgi.input"], limit, hold)
         )
     except Problem:
         raise
@@ -44,23 +48,37 @@ def read_body(environ: Environ, limit: int) -> bytes:
     except Exception:
         # each server has exceptions of its own for broken chunks and connections; none is the service's fault
         raise Problem(400, "the body cannot be read: its chunks are broken, or the connection ended") from None
+    if ticket is not None:
+        ticket.enter()
+    return body
 
 
-def _read_announced(stream: Any, length: int, limit: int) -> bytes:
+def _hold_all(size: int) -> None:
+    """Hold a part of a body, of which small ones are not counted."""
+
+
+def _read_announced(stream: Any, length: int, limit: int, hold: Callable[[int], None]) -> bytes:
     if length > limit:
         raise _too_large(limit)
-    body: bytes = stream.read(length) if length else b""
+    # a piece counts once it has come: a client that announces much and sends nothing takes no room from others
+    body: bytes = _pieces(stream, length, hold) if length > _PIECE else stream.read(length)
     if len(body) < length:
         raise Problem(400, f"the body ends after {len(body)} of the {length} bytes that were announced")
     return body
 
 
-def _read_chunks(stream: Any, limit: int) -> bytes:
+def _read_chunks(stream: Any, limit: int, hold: Callable[[int], None]) -> bytes:
+    body = _pieces(stream, limit + 1, hold)
+    if len(body) > limit:
+        raise _too_large(limit)
+    return body
+
+
+def _pieces(stream: Any, most: int, hold: Callable[[int], None]) -> bytes:
     pieces, held = [], 0
-    while piece := stream.read(min(_PIECE, limit + 1 - held)):
+    while held < most and (piece := stream.read(min(_PIECE, most - held))):
+        hold(len(piece))
         held += len(piece)
-        if held > limit:
-            raise _too_large(limit)
         pieces.append(piece)
     return b"".join(pieces)
 

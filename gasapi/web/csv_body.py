@@ -6,6 +6,7 @@ The body is put aside before the answer begins, since a client that is still sen
 
 from __future__ import annotations
 
+import errno
 import tempfile
 from collections.abc import Iterator, Mapping, Sequence
 from typing import IO, Any, NamedTuple
@@ -24,6 +25,7 @@ from gasapi.web.negotiation import content_type
 from gasapi.web.problems import Fault, Path, Problem, invalid, pointer, shown
 from gasapi.web.query import QueryForm
 from gasapi.web.series_questions import SeriesReader, Terms
+from gasapi.web.turns import TICKET
 
 __all__ = ["HELD", "CsvRows", "CsvSeries", "CsvSeriesReader", "is_known_column", "put_aside", "require_csv"]
 
@@ -31,6 +33,7 @@ HELD = 16 * 1024 * 1024
 """Bytes of a body that are held in memory; what is beyond stands in a temporary file."""
 
 _PIECE = 256 * 1024
+_BROKEN = "the body cannot be read: its chunks are broken, or the connection ended"
 _FRACTION = "fraction."
 _KNOWN = ("pressure", "temperature", "timestamps", "input_status")
 _LONGEST_QUERY = 1 << 16
@@ -224,14 +227,26 @@ def put_aside(environ: Environ, limit: int) -> IO[bytes]:
     except Problem:
         body.close()
         raise
+    except OSError as error:
+        body.close()
+        if error.errno in (errno.ENOSPC, errno.EDQUOT):
+            words = "there is no room now to put so large a body aside; ask again, or send it in parts"
+            raise Problem(503, words, headers=[("Retry-After", "5")]) from None
+        raise Problem(400, _BROKEN) from None
     except Exception:
         body.close()
         # each server has exceptions of its own for broken chunks and connections; none is the service's fault
-        raise Problem(400, "the body cannot be read: its chunks are broken, or the connection ended") from None
+        raise Problem(400, _BROKEN) from None
     if length is not None and held < length:
         body.close()
         raise Problem(400, f"the body ends after {held} of the {length} bytes that were announced")
     body.seek(0)
+    if TICKET in environ:
+        try:
+            environ[TICKET].enter()
+        except Problem:
+            body.close()
+            raise
     return body
 
 

@@ -6,12 +6,13 @@ can tell the sum of all.
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from pathlib import Path
 
 from prometheus_client import CollectorRegistry, Counter, Gauge, Histogram, generate_latest
 from prometheus_client.multiprocess import MultiProcessCollector
 
-from gasapi import __version__
+from gasapi.service.answers import StateAnswer
 
 __all__ = ["CONTENT_TYPE", "Metrics"]
 
@@ -36,8 +37,30 @@ class Metrics:
         )
         memo = Counter("gasapi_memo", "Look-ups in the memo of answers", ("outcome",), registry=self._registry)
         self._hits, self._misses = memo.labels("hit"), memo.labels("miss")
-        info = Gauge("gasapi_build_info", "Always 1", ("version",), registry=self._registry, multiprocess_mode="max")
-        info.labels(__version__).set(1.0)
+        self._info = Gauge(
+            "gasapi_build_info", "Always 1", ("version", "data"), registry=self._registry, multiprocess_mode="max"
+        )
+        states = Counter("gasapi_states", "States answered beyond the memo of requests", ("source",), registry=self._registry)
+        self._solved, self._held = states.labels("solved"), states.labels("held")
+        self._quality = Counter("gasapi_quality", "States and rows by quality", ("model", "level"), registry=self._registry)
+        self._not_converged = Counter(
+            "gasapi_not_converged", "States whose solution did not converge", ("model",), registry=self._registry
+        )
+        self._outside = Counter(
+            "gasapi_outside_validity", "States outside the published range, by gas", ("gas",), registry=self._registry
+        )
+        self._rows = Counter("gasapi_rows", "Rows of series answered", ("level",), registry=self._registry)
+        self._large = Gauge(
+            "gasapi_large_in_flight",
+            "Large questions under way or in line",
+            registry=self._registry,
+            multiprocess_mode="livesum",
+        )
+        self._audit_failures = Counter(
+            "gasapi_audit_failures", "Lines of the audit file that could not be written", registry=self._registry
+        )
+        self._gases: frozenset[str] = frozenset()
+        self._by_quality: dict[tuple[str, str], Counter] = {}
         self._by_request: dict[tuple[str, str, str], Counter] = {}
         self._by_route: dict[str, Histogram] = {}
 
@@ -59,6 +82,47 @@ class Metrics:
     def memo(self, hit: bool) -> None:
         """Count a look-up in the memo."""
         (self._hits if hit else self._misses).inc()
+
+    def built(self, version: str, data: str, gases: Iterable[str]) -> None:
+        """Tell what is at work.
+
+        :param gases: ids that may be told by name; others were typed by a caller
+        """
+        self._info.labels(version, data).set(1.0)
+        self._gases = frozenset(gases)
+
+    def state(self, answer: StateAnswer, held: bool) -> None:
+        """Count a state that was solved, or held from before."""
+        (self._held if held else self._solved).inc()
+        self._level(answer.model.id, answer.quality.level, 1)
+        reasons = answer.quality.reasons
+        if reasons:
+            if "not_converged" in reasons:
+                self._not_converged.labels(answer.model.id).inc()
+            if "outside_validity" in reasons or "outside_limits" in reasons:
+                gas = answer.gas.id
+                self._outside.labels("mixture" if gas is None else gas if gas in self._gases else "other").inc()
+
+    def rows(self, model: str, counts: Iterable[tuple[str, int]]) -> None:
+        """Count the rows of a series by level."""
+        for level, count in counts:
+            if count:
+                self._rows.labels(level).inc(count)
+                self._level(model, level, count)
+
+    def _level(self, model: str, level: str, count: int) -> None:
+        counter = self._by_quality.get((model, level))
+        if counter is None:
+            counter = self._by_quality[model, level] = self._quality.labels(model, level)
+        counter.inc(count)
+
+    def large(self, change: int) -> None:
+        """Count large questions in, or out."""
+        self._large.inc(change)
+
+    def audit_failure(self) -> None:
+        """Count a line of the audit file that could not be written."""
+        self._audit_failures.inc()
 
     def exposition(self) -> bytes:
         """Return all counters in the text format, summed over the workers."""

@@ -57,6 +57,7 @@ KINDS: Mapping[int, Kind] = {
     413: Kind("ContentTooLarge", "The body is too large"),
     415: Kind("UnsupportedMediaType", "The body has the wrong media type"),
     422: Kind("UnprocessableContent", "The question does not make sense"),
+    429: Kind("TooManyRequests", "Too many requests"),
     500: Kind("InternalServerError", "The service failed"),
     503: Kind("ServiceUnavailable", "The service cannot answer now"),
 }

@@ -296,7 +296,7 @@ def test_workers_count_and_log_together():
     counted = re.search(r'gasapi_requests_total\{method="POST",route="/v1/state",status="200"\} (\S+)', text)
     assert float(counted[1]) == 30.0
     lines = [json.loads(line) for line in output.splitlines() if line.startswith("{")]
-    assert all({"time", "route", "method", "status", "seconds"} == line.keys() for line in lines)
+    assert all({"time", "route", "method", "status", "seconds", "request_id"} == line.keys() for line in lines)
     assert 30 == sum((line["route"], line["method"], line["status"]) == ("/v1/state", "POST", 200) for line in lines)
     assert "nitrogen" not in output
 

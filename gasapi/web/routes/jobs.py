@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import time
 from collections.abc import Callable
 from functools import partial
 from typing import Any, NamedTuple
@@ -26,15 +25,11 @@ from gasapi.web.negotiation import JSON, accepted
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid, pointer
 from gasapi.web.query import parameter_pairs
+from gasapi.web.turns import give_way
 
-__all__ = ["JOBS", "Job", "give_way", "job_routes", "refuse_parameters"]
+__all__ = ["JOBS", "Job", "job_routes", "refuse_parameters"]
 
 _FORMS = (JSON,)
-
-
-def give_way() -> None:
-    """Let other requests of this worker have their turn."""
-    time.sleep(0)
 
 
 class Job(NamedTuple):

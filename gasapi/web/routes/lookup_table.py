@@ -15,8 +15,9 @@ from gasapi.web.job_questions import LookupTableReader
 from gasapi.web.negotiation import JSON, accepted
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid
-from gasapi.web.routes.jobs import give_way, refuse_parameters
+from gasapi.web.routes.jobs import refuse_parameters
 from gasapi.web.table_answers import TABLE_CSV, TABLE_TEXT, table_csv, table_members, table_text
+from gasapi.web.turns import give_way
 
 __all__ = ["lookup_table_routes"]
 

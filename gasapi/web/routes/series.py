@@ -6,7 +6,6 @@ depends on them, once more for the answer, which leaves block by block.
 
 from __future__ import annotations
 
-import time
 from collections.abc import Iterator
 from typing import IO, Any
 
@@ -19,12 +18,14 @@ from gasapi.service.series import RowComposition, Series, SeriesRows, Survey
 from gasapi.units import UnitMap
 from gasapi.web.body import Environ, read_body, require_json
 from gasapi.web.csv_body import CsvSeries, CsvSeriesReader, put_aside, require_csv
+from gasapi.web.metrics import Metrics
 from gasapi.web.negotiation import CSV, JSON, MediaType, accepted, content_type
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Problem
 from gasapi.web.routes.jobs import refuse_parameters
 from gasapi.web.series_answers import array_bytes, csv_header, csv_lines, given_lines, joined_rows, json_pieces
 from gasapi.web.series_questions import AskedSeries, SeriesReader, Terms
+from gasapi.web.turns import give_way
 
 __all__ = ["CSV_WITH_HEADER", "MOST_JSON_ANSWERS", "series_routes"]
 
@@ -52,14 +53,14 @@ def series_routes(parts: Parts) -> Blueprint:
             require_csv(environ)
             body = put_aside(environ, settings.csv_limit)
             try:
-                return _answer_csv(context, csv_reader, body, environ["QUERY_STRING"], form)
+                return _answer_csv(parts, csv_reader, body, environ["QUERY_STRING"], form)
             except BaseException:
                 body.close()
                 raise
         require_json(environ)
         if environ["QUERY_STRING"]:
             refuse_parameters(environ["QUERY_STRING"])
-        return _answer_json(context, reader.of_body(read_body(environ, settings.json_limit)), form)
+        return _answer_json(parts, reader.of_body(read_body(environ, settings.json_limit)), form)
 
     return routes
 
@@ -69,31 +70,28 @@ def _is_csv(environ: Environ) -> bool:
     return kind is not None and (kind.type, kind.subtype) == ("text", "csv")
 
 
-def _pause() -> None:
-    """Let other requests of this worker have their turn; looked up at the call, since a worker may put its own in place."""
-    time.sleep(0)
-
-
 def _response(body: Any, form: MediaType) -> Response:
     return Response(body, headers=[("Content-Type", str(form)), ("Vary", "Accept")])
 
 
 def _open(context: Context, terms: Terms, survey: Survey) -> Series:
     try:
-        return Series(context, terms.question, survey, _pause)
+        return Series(context, terms.question, survey, give_way)
     except GasapiError as error:
         raise terms.problem(error) from None
 
 
-def _answer_json(context: Context, asked: AskedSeries, form: MediaType) -> Response:
+def _answer_json(parts: Parts, asked: AskedSeries, form: MediaType) -> Response:
     terms = asked.terms
     survey = Survey(terms.question)
     survey.add(asked.columns)
-    series = _open(context, terms, survey)
+    series = _open(parts.context, terms, survey)
     rows = series.answer(asked.columns)
+    summary = series.summary()
+    parts.metrics.rows(summary.model.id, summary.counts)
     if form is JSON:
         timestamps = None if asked.timestamps is None else [array_bytes(asked.timestamps)]
-        return _response(b"".join(json_pieces(rows, series.summary(), terms.units, timestamps)), form)
+        return _response(b"".join(json_pieces(rows, summary, terms.units, timestamps)), form)
     units = terms.units
     given: list[Any] = [asked.pressure, asked.temperature]
     names = [f"pressure [{units.pressure.name}]", f"temperature [{units.temperature.name}]"]
@@ -104,32 +102,34 @@ def _answer_json(context: Context, asked: AskedSeries, form: MediaType) -> Respo
     return _response((csv_header(",".join(names).encode(), units) if form is CSV_WITH_HEADER else b"") + lines, form)
 
 
-def _answer_csv(context: Context, reader: CsvSeriesReader, body: IO[bytes], query: str, form: MediaType) -> Response:
+def _answer_csv(parts: Parts, reader: CsvSeriesReader, body: IO[bytes], query: str, form: MediaType) -> Response:
     asked = reader.of_body(body, query)
     terms = asked.terms
     survey = Survey(terms.question)
     if isinstance(terms.question.gas, RowComposition) or terms.question.model == AUTO:
         for block in asked.blocks():
             survey.add(block.columns)
-            _pause()
-    series = _open(context, terms, survey)
+            give_way()
+    series = _open(parts.context, terms, survey)
     if form is JSON:
-        return _response(_json_of_csv(series, asked), form)
-    return _response(_csv_of_csv(series, asked, terms.units, form), form)
+        return _response(_json_of_csv(series, asked, parts.metrics), form)
+    return _response(_csv_of_csv(series, asked, terms.units, form, parts.metrics), form)
 
 
-def _csv_of_csv(series: Series, asked: CsvSeries, units: UnitMap, form: MediaType) -> Iterator[bytes]:
+def _csv_of_csv(series: Series, asked: CsvSeries, units: UnitMap, form: MediaType, metrics: Metrics) -> Iterator[bytes]:
     try:
         if form is CSV_WITH_HEADER:
             yield csv_header(asked.header, units)
         for block in asked.blocks():
             rows = series.answer(block.columns)
             yield csv_lines(block.texts, rows, units, block.unreadable)
+        summary = series.summary()
+        metrics.rows(summary.model.id, summary.counts)
     finally:
         asked.close()
 
 
-def _json_of_csv(series: Series, asked: CsvSeries) -> Iterator[bytes]:
+def _json_of_csv(series: Series, asked: CsvSeries, metrics: Metrics) -> Iterator[bytes]:
     """Return the pieces of a JSON answer; the rows are answered here, before anything is sent."""
     parts: list[SeriesRows] = []
     timestamps: list[bytes] = []
@@ -145,4 +145,6 @@ def _json_of_csv(series: Series, asked: CsvSeries) -> Iterator[bytes]:
             timestamps.append(array_bytes([text.decode("utf-8", "replace") for text in block.timestamps]))
     asked.close()
     times = timestamps if asked.has_timestamps else None
-    return json_pieces(joined_rows(parts), series.summary(), asked.terms.units, times, unreadable)
+    summary = series.summary()
+    metrics.rows(summary.model.id, summary.counts)
+    return json_pieces(joined_rows(parts), summary, asked.terms.units, times, unreadable)

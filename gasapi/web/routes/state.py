@@ -4,18 +4,20 @@ from __future__ import annotations
 
 from flask import Blueprint, Response, request
 
-from gasapi.errors import GasapiError
+from gasapi.errors import GasapiError, UnknownGas
+from gasapi.service.context import Context
 from gasapi.service.state import answer_state
 from gasapi.web.answers import remembered_form, state_json, state_line
 from gasapi.web.body import Environ, read_body, require_json
+from gasapi.web.caching import SITE
 from gasapi.web.edge import BODY, Direct, Reply, remember
 from gasapi.web.negotiation import CSV, JSON, accepted
 from gasapi.web.parts import Parts
 from gasapi.web.problems import Fault, invalid, pointer
 from gasapi.web.query import parameter_pairs
-from gasapi.web.questions import StateReader
+from gasapi.web.questions import Asked, StateReader
 
-__all__ = ["PATH", "state_answerer", "state_routes"]
+__all__ = ["PATH", "depends_on_site", "state_answerer", "state_routes"]
 
 PATH = "/v1/state"
 
@@ -29,7 +31,7 @@ def state_answerer(parts: Parts) -> Direct:
 
     The edge calls it directly, since the routing and the contexts of Flask cost as much as the density does.
     """
-    context, limit = parts.context, parts.settings.json_limit
+    context, limit, metrics = parts.context, parts.settings.json_limit, parts.metrics
     reader = StateReader(context.catalogue, context.ambient_pressure)
 
     def answer(environ: Environ) -> Reply:
@@ -46,6 +48,9 @@ def state_answerer(parts: Parts) -> Direct:
             answered = answer_state(context, asked.question)
         except GasapiError as error:
             raise asked.problem(error) from None
+        metrics.state(answered.answer, answered.cached)
+        if context.site is not None and depends_on_site(context, asked):
+            environ[SITE] = True
         if form is CSV:
             written = again = state_line(asked, answered)
             headers = _CSV_HEADERS
@@ -69,6 +74,26 @@ def state_routes(answer: Direct) -> Blueprint:
         return Response(body, headers=headers)
 
     return routes
+
+
+def depends_on_site(context: Context, asked: Asked) -> bool:
+    """Return whether an answer could be another with another site file: by its gas, its ambient pressure or its margin."""
+    site, question = context.site, asked.question
+    if site is None:
+        return False
+    if site.dew_point_margin is not None and question.dew_point_margin is None:
+        return True
+    if site.ambient_pressure is not None and asked.units.pressure.gauge:
+        return True
+    names = [question.gas.name] if question.gas.name is not None else [name for name, _ in question.gas.fractions or ()]
+    return any(_is_of_site(context, name) for name in names)
+
+
+def _is_of_site(context: Context, name: str) -> bool:
+    try:
+        return context.catalogue.find(name).kind == "site"
+    except UnknownGas:
+        return False  # a substance of the question itself
 
 
 def _refuse_parameters(query: str) -> None:
