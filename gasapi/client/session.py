@@ -13,6 +13,7 @@ from requests.adapters import HTTPAdapter
 from urllib3.util.retry import Retry
 
 from gasapi.client.errors import AnswerUnreadable, ServiceProblem, ServiceUnreachable, problem_of
+from gasapi.client.jobs import JobCalls
 from gasapi.client.parts import joined_parts, series_columns, series_parts
 
 __all__ = ["Client"]
@@ -27,7 +28,7 @@ Gas = str | Mapping[str, Any]
 """A name, or ``{"fractions": {...}, ...}`` as the service takes it."""
 
 
-class Client:
+class Client(JobCalls):
     """Asks a running service. One client is for one thread; it may be used in a ``with`` statement.
 
     A question changes nothing on the other side, so every call is tried again where the connection fails or the service
@@ -175,6 +176,18 @@ class Client:
         """
         body = orjson.dumps(question, option=orjson.OPT_SERIALIZE_NUMPY, default=_plain)
         return self._answer(self._request("POST", path, data=body, headers={"Content-Type": _JSON}))
+
+    def ask_text(self, path: str, question: Mapping[str, Any]) -> str:
+        """Return the answer to a question that is given as text, such as a table in Structured Text.
+
+        :param path: begins with ``/v1/``
+        :param question: the members; NumPy numbers and arrays may stand among them
+        :raises ServiceProblem: the service refused the question, or failed
+        :raises ServiceUnreachable: no answer came
+        """
+        body = orjson.dumps(question, option=orjson.OPT_SERIALIZE_NUMPY, default=_plain)
+        headers = {"Content-Type": _JSON, "Accept": "text/csv, text/plain"}
+        return self._request("POST", path, data=body, headers=headers).text
 
     def fetch(self, path: str, **parameters: str) -> dict[str, Any]:
         """Return what is found at a path, such as ``/v1/gases`` with ``search``.
