@@ -8,3 +8,8 @@ app = Flask(__name__)
 @app.get("/")
 def nothing() -> str:
     return ""
+
+
+@app.post("/v1/state")
+def nothing_asked() -> str:
+    return ""

@@ -2,10 +2,10 @@
 
     python tests/bench/state_throughput.py [--workers 1] [--rounds 5] [--seconds 2] [--connections 4]
 
-Sides: the empty application (GET, no body); states never asked before, of a pure gas and of a natural gas that are known;
-one question again and again. Counters and a log line for each request are on. The sides take turns, and the ratio of each
-turn is taken to the empty application of the same turn; medians are printed. The load comes from a process of its own over
-kept connections.
+Sides: the empty application, fetched (GET, no body) and with the same questions posted to it, which it does not read; states
+never asked before, of a pure gas and of a natural gas that are known; one question again and again. Counters and a log line
+for each request are on. The sides take turns, and the ratios of each turn are taken to the two floors of the same turn;
+medians are printed. The load comes from a process of its own over kept connections.
 """
 
 from __future__ import annotations
@@ -70,7 +70,8 @@ def cached_requests(seed: int) -> Iterator[bytes]:
         yield request
 
 
-SIDES = {"empty": empty_requests, "cold": pure_requests, "cold mixture": mixture_requests, "cached": cached_requests}
+FLOORS = {"empty GET": empty_requests, "empty POST": pure_requests}
+SIDES = {**FLOORS, "cold": pure_requests, "cold mixture": mixture_requests, "cached": cached_requests}
 
 
 class Connection:
@@ -185,7 +186,7 @@ def main() -> None:
         with get_context("spawn").Pool(1) as pool:
             for turn in range(-1, options.rounds):
                 for side in SIDES:
-                    port, server = (empty_port, servers[0]) if side == "empty" else (our_port, servers[1])
+                    port, server = (empty_port, servers[0]) if side in FLOORS else (our_port, servers[1])
                     seconds = options.seconds if turn >= 0 else 0.5  # the first turn warms up
                     used = cpu_seconds(server.pid)
                     figure = pool.apply(drive, (port, side, turn + 2, seconds, options.connections))
@@ -199,15 +200,18 @@ def main() -> None:
             server.wait(timeout=40)
     print(f"{workers} worker(s), {options.connections} connections, {options.rounds} rounds of {options.seconds:g} s")
     for side, rows in figures.items():
-        ratio, cpu_ratio = (
-            statistics.median(one(row) / one(empty) for row, empty in zip(rows, figures["empty"], strict=True))
-            for one in (lambda row: row[0], lambda row: 1.0 / row[3])
-        )
         rate, median, slow, cpu = (statistics.median(column) for column in zip(*rows, strict=True))
         print(
-            f"{side:<13} {rate:6.0f} requests/s  ratio {ratio:.2f}   {cpu:4.0f} us of CPU  ratio {cpu_ratio:.2f}   "
-            f"median {median:.0f} us  99 % {slow:.0f} us"
+            f"{side:<13} {rate:5.0f} requests/s, {cpu:3.0f} us of CPU, median {median:.0f} us, 99 % {slow:.0f} us; ratios",
+            end="",
         )
+        for name in FLOORS:
+            by_rate, by_cpu = (
+                statistics.median(one(row) / one(floor) for row, floor in zip(rows, figures[name], strict=True))
+                for one in (lambda row: row[0], lambda row: 1.0 / row[3])
+            )
+            print(f"  to {name} {by_rate:.2f} (CPU {by_cpu:.2f})", end="")
+        print()
 
 
 if __name__ == "__main__":
