@@ -10,12 +10,14 @@ from gasapi.gases.data_files import data_files, data_hash, hash_of_files
 from gasapi.gases.equation_files import load_gerg, load_reference, reference_ids
 from gasapi.gases.interaction_file import load_interaction
 from gasapi.gases.substance_files import load_blends, load_substances
+from gasapi.gases.uncertainty_file import load_generalised_uncertainty
 
 __all__ = [
     "data_files",
     "data_hash",
     "hash_of_files",
     "load_blends",
+    "load_generalised_uncertainty",
     "load_gerg",
     "load_interaction",
     "load_reference",

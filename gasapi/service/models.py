@@ -56,7 +56,11 @@ class GeneralisedModel(NamedTuple):
     uses_interaction: bool
 
 
-_WORKING: Final = "range over which the uncertainty was measured against reference equations"
+# the uncertainty was measured up to 10 times this pressure and counts from 0.4 Tc on; non-quantum gases reach 16 Tc
+_WORKING: Final = (
+    "range over which the uncertainty was measured against reference equations; above a reduced temperature of 16 for"
+    " quantum gases only"
+)
 
 GENERALISED: Final[Mapping[str, GeneralisedModel]] = {
     line.module.ID: line
