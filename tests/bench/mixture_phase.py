@@ -1,4 +1,4 @@
-"""What a phase verdict costs: a new composition, a single state, a row; against a general library's loop for the boundary.
+"""What a phase verdict costs: a new composition, a single state, a row; against a general library's loop of dew points.
 
 Run as ``python tests/bench/mixture_phase.py``. Processor time, best of several runs; the gas is invented. The project's aims:
 150 ms (better 60) for a new 11-component gas, 20 microseconds a state, 0.3 a row.
@@ -33,7 +33,6 @@ _COOLPROP = {
     "n-pentane": "n-Pentane",
     "isopentane": "Isopentane",
     "n-hexane": "n-Hexane",
-    "helium": "Helium",
 }
 
 
@@ -47,11 +46,19 @@ def _best(call: Callable[[], object], runs: int) -> float:
     return min(times)
 
 
-def _library_envelope() -> None:
+def _library_dew_points() -> int:
+    """Return how many of 20 dew points a general library finds for the natural gas without its helium."""
     state = CoolProp.AbstractState("HEOS", "&".join(_COOLPROP.values()))
-    total = sum(NATURAL_GAS.values())
+    total = sum(NATURAL_GAS[c] for c in _COOLPROP)
     state.set_mole_fractions([NATURAL_GAS[c] / total for c in _COOLPROP])
-    state.build_phase_envelope("")
+    found = 0
+    for pressure in np.geomspace(1e5, 4e6, 20):
+        try:
+            state.update(CoolProp.PQ_INPUTS, float(pressure), 1.0)
+        except ValueError:
+            continue
+        found += 1
+    return found
 
 
 def main() -> None:
@@ -75,10 +82,9 @@ def main() -> None:
         flash = _best(lambda f=phase: f.flash(230.0, 4e6), 3)
         print(f"{name:28}  new {new * 1e3:6.1f} ms  state {state * 1e6:5.2f} us  row {row * 1e6:6.3f} us", end="")
         print(f"  region alone {region * 1e6:6.3f} us  flash {flash * 1e3:5.1f} ms")
-    try:
-        print(f"a general library's envelope of the natural gas: {_best(_library_envelope, 1) * 1e3:.0f} ms")
-    except ValueError as error:
-        print(f"a general library's envelope of the natural gas: none ({error})")
+    start = time.process_time()
+    found = _library_dew_points()
+    print(f"a general library's loop: {found} of 20 dew points in {(time.process_time() - start) * 1e3:.0f} ms")
 
 
 if __name__ == "__main__":

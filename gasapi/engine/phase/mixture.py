@@ -5,7 +5,8 @@ How a service calls it::
     phase = mixture_phase(system, fractions)      # GergSystem or CubicMixture; 20 to 60 ms, keep it in a bounded cache
     verdict = phase.at(temperature, pressure)     # region, dew point, margins, flags: some 10 us
     verdicts = phase.block(temperature, pressure) # the same bits for arrays
-    regions = phase.region_block(temperature, pressure)   # regions alone, where margins are not asked for
+    regions = phase.region_block(temperature, pressure)       # regions alone, where margins are not asked for
+    region, near = phase.survey_float(temperature, pressure, 5.0)   # and survey_block: what quality needs
     phase.outline()                               # arrays and named points for a phase diagram
     phase.flash(temperature, pressure)            # two phases at one state (milliseconds)
 
@@ -15,6 +16,10 @@ cricondenbar without a break, and ln p(T) in u = sqrt(T_max - T), which passes t
 rounded (1e-7 K, 1e-10 in ln p) before the cubics are made, so that nothing hangs on the last bits of a linear solve. Whatever
 the tables do not cover is put to a direct stability test, one state at a time; so a block has the bits of its states.
 
+The ``critical``, ``outline`` and curves are those of the gas without its water, at its share of the pressure; a boundary
+that cannot be traced leaves every state to the direct test (some 20 ms each: a service may wish to bound how many it allows).
+The equation is never asked about solids: ice and hydrates are flags, dry ice and frozen heavy ends are not told.
+
 Where both a hydrocarbon liquid and liquid water can form, the dew point is the higher of the two. States below both lines are
 two-phase here, although a third phase may be present.
 """
@@ -23,8 +28,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from enum import IntEnum, IntFlag
-from typing import Final, NamedTuple
+from typing import Final
 
 import numpy as np
 from numpy.typing import NDArray
@@ -39,6 +43,17 @@ from gasapi.engine.phase.cubic_energy import CubicEnergy
 from gasapi.engine.phase.curves import DIRECT, BoundaryCurve, OddBoundary, WaterCurve
 from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.flash import FlashResult, two_phase_flash
+from gasapi.engine.phase.mixture_verdict import (
+    UNSURE,
+    DewKind,
+    DewUncertainty,
+    MixtureBlock,
+    MixtureFlag,
+    MixtureOutline,
+    MixtureVerdict,
+    kelvin_block,
+    kelvin_float,
+)
 from gasapi.engine.phase.region import Region
 from gasapi.engine.phase.stability import Stability, StabilityResult, StabilityTest
 from gasapi.engine.phase.table import CubicTable
@@ -94,6 +109,7 @@ _HYDRATE_NEAR: Final = 8.0
 _TRIPLE: Final = 273.16
 _NEAR_TEMPERATURE: Final = 0.02
 _NEAR_PRESSURE: Final = 0.1
+_CLOSE_PRESSURE: Final = 0.03
 
 _LIGHT: Final = 460.0
 """K: critical temperatures of the butanes lie below, those of the pentanes at it or above."""
@@ -137,101 +153,6 @@ def _share(energy: MixtureEnergy, z: Floats, kept: Sequence[int]) -> tuple[Mixtu
     return energy.subset(kept), left / share, -math.log(share)
 
 
-class DewKind(IntEnum):
-    """Which phase appears first on cooling at constant pressure."""
-
-    NONE = 0
-    HYDROCARBON = 1
-    """A liquid of the gas itself (or, beyond the critical point, a bubble in it)."""
-
-    WATER = 2
-    """An aqueous liquid."""
-
-
-class MixtureFlag(IntFlag):
-    """What else is to be said of a state."""
-
-    HYDRATE_POSSIBLE = 1
-    ICE_POSSIBLE = 2
-    NEAR_CRITICAL = 4
-    ABOVE_CRICONDENBAR = 8
-    """There is no dew point at this pressure, since it is above the cricondenbar."""
-
-    DEW_BELOW_RANGE = 16
-    """The dew point lies below the lowest temperature of the equation, if there is one."""
-
-    DIRECT = 32
-    """By a stability test of this state, not by the boundary: no dew point and no margins."""
-
-    EXTRAPOLATED = 64
-    """The dew point lies below the lowest pressure of the trace (1 kPa, or more where the liquid is too cold)."""
-
-    WATER_AND_LIQUID = 128
-    """Below both dew points: three phases are possible."""
-
-
-class DewUncertainty(NamedTuple):
-    """The uncertainty of a dew temperature (k = 2): ``kelvin`` + ``per_pascal`` p, but ``most`` K at most, and its basis."""
-
-    kelvin: float
-    per_pascal: float
-    most: float
-    basis: str
-
-
-_UNSURE: Final = DewUncertainty(5.0, 0.0, 5.0, "estimate")
-
-
-def _kelvin_float(u: DewUncertainty, p: float) -> float:
-    kelvin = u.kelvin + u.per_pascal * p
-    return kelvin if kelvin < u.most else u.most
-
-
-def _kelvin_block(u: DewUncertainty, p: Array) -> Array:
-    if u.per_pascal == 0.0:
-        return np.full(p.size, u.kelvin)
-    kelvin = u.kelvin + u.per_pascal * p
-    return np.where(kelvin < u.most, kelvin, u.most)
-
-
-class MixtureVerdict(NamedTuple):
-    """The phase of one state: K and Pa, margins positive on the gas side; None where there is no such boundary."""
-
-    region: int
-    dew_point_temperature: float | None
-    dew_kind: int
-    margin_temperature: float | None
-    margin_pressure: float | None
-    dew_point_uncertainty: float | None
-    flags: int
-
-
-class MixtureBlock(NamedTuple):
-    """The same for rows, each of shape (n,): regions, kinds and flags as small integers, NaN where there is no boundary."""
-
-    region: NDArray[np.int8]
-    dew_point_temperature: Array
-    dew_kind: NDArray[np.int8]
-    margin_temperature: Array
-    margin_pressure: Array
-    dew_point_uncertainty: Array
-    flags: NDArray[np.int16]
-
-
-class MixtureOutline(NamedTuple):
-    """A phase diagram: dew and bubble line as one curve, the water dew line, named points; K and Pa, None where missing."""
-
-    temperature: Floats
-    pressure: Floats
-    water_temperature: Floats
-    water_pressure: Floats
-    critical: NamedPoint | None
-    cricondentherm: NamedPoint | None
-    cricondenbar: NamedPoint | None
-    complete: bool
-    end: str
-
-
 class MixturePhase:
     """The phase of one composition by one equation. Immutable, and safe to share between threads.
 
@@ -255,7 +176,7 @@ class MixturePhase:
         dry: Sequence[int] | None = None,
         checked: bool = False,
         cold_water: bool = False,
-        uncertainty: tuple[DewUncertainty, DewUncertainty] = (_UNSURE, _UNSURE),
+        uncertainty: tuple[DewUncertainty, DewUncertainty] = (UNSURE, UNSURE),
     ) -> None:
         z = np.array(fractions, dtype=np.float64)
         names = energy.components
@@ -457,9 +378,9 @@ class MixturePhase:
         region = self._name_float(t, p, region)
         kelvin = None
         if up == up and not water >= up:
-            dew, kind, kelvin = up, 1, _kelvin_float(self.hydrocarbon_uncertainty, p)
+            dew, kind, kelvin = up, 1, kelvin_float(self.hydrocarbon_uncertainty, p)
         elif water == water:
-            dew, kind, kelvin = water, 2, _kelvin_float(self.water_uncertainty, p)
+            dew, kind, kelvin = water, 2, kelvin_float(self.water_uncertainty, p)
         else:
             dew, kind = math.nan, 0
         margin_t = _margin_temperature(t, region, dew, up, low)
@@ -668,9 +589,9 @@ class MixturePhase:
             else:
                 dew, kind = up, np.ones(t.size, dtype=np.int8)
             none = dew != dew
-            kelvin = _kelvin_block(self.hydrocarbon_uncertainty, p)
+            kelvin = kelvin_block(self.hydrocarbon_uncertainty, p)
             if self._wet:
-                kelvin = np.where(kind == 2, _kelvin_block(self.water_uncertainty, p), kelvin)
+                kelvin = np.where(kind == 2, kelvin_block(self.water_uncertainty, p), kelvin)
             if none.any():
                 kind[none] = 0
                 kelvin[none] = math.nan
@@ -743,6 +664,33 @@ class MixturePhase:
             tc, pc = self._critical_temperature, self._critical_pressure
             flags[(np.abs(t - tc) < _NEAR_TEMPERATURE * tc) & (np.abs(p - pc) < _NEAR_PRESSURE * pc)] |= 4
         return flags
+
+    # what a series asks
+
+    def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool]:
+        """Return the region of one state, and whether it is one phase close to where another appears.
+
+        Close is less than ``margin`` above the dew temperature; above the cricondenbar, where there is none, less than 3 % of
+        the pressure from the boundary (our choice: some kelvin for a natural gas).
+
+        :param temperature: K
+        :param pressure: Pa
+        :param margin: K
+        """
+        v = self.at(temperature, pressure)
+        if v.region not in (_GAS, _SUPERCRITICAL):
+            return v.region, False
+        if v.margin_temperature is not None:
+            return v.region, v.margin_temperature < margin
+        return v.region, v.margin_pressure is not None and v.margin_pressure < _CLOSE_PRESSURE * pressure
+
+    def survey_block(self, temperature: Array, pressure: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
+        """Return the same for rows, each of shape (n,)."""
+        b = self.block(temperature, pressure)
+        with np.errstate(invalid="ignore"):
+            none = b.margin_temperature != b.margin_temperature
+            near = np.where(none, b.margin_pressure < _CLOSE_PRESSURE * pressure, b.margin_temperature < margin)
+        return b.region, near & ((b.region == _GAS) | (b.region == _SUPERCRITICAL))
 
     # other questions
 
@@ -824,7 +772,7 @@ def mixture_phase(system: GergSystem | CubicMixture, fractions: Sequence[float])
         substances = [system.substances[i] for i in present]
         miscible = any("associating" in s.flags and s.id != WATER for s in substances)
         fluid, missing, allowance = cubic, bool(cubic.missing_pairs), (3.0, 5.0)
-        water = _UNSURE
+        water = UNSURE
     names = energy.components
     dry = [i for i, c in enumerate(names) if c != WATER]
     light, heavy = allowance

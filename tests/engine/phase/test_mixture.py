@@ -213,3 +213,20 @@ def test_a_direct_test_stands_in_where_the_curves_end():
     assert verdict.margin_pressure is None
     expected = phase.stability(t, p).verdict
     assert verdict.region == {Stability.STABLE: Region.LIQUID, Stability.UNSTABLE: Region.TWO_PHASE}[expected]
+
+
+def test_what_is_close_to_condensing():
+    """A gas 3 K above its dew point is close to it at a margin of 5 K and not at 2 K; rows say the same as states."""
+    phase = gerg_phase(NATURAL_GAS)
+    dew = phase.at(300.0, 2e6).dew_point_temperature
+    assert phase.survey_float(dew + 3.0, 2e6, 5.0) == (Region.GAS, True)
+    assert phase.survey_float(dew + 3.0, 2e6, 2.0) == (Region.GAS, False)
+    assert phase.survey_float(dew - 3.0, 2e6, 5.0) == (Region.TWO_PHASE, False)
+    bar = phase.outline().cricondenbar
+    assert phase.survey_float(bar.temperature, bar.pressure * 1.01, 5.0)[1]
+    assert not phase.survey_float(bar.temperature, bar.pressure * 1.3, 5.0)[1]
+    t, p = np.linspace(235.0, 275.0, 400), np.linspace(9e6, 2e6, 400)
+    regions, near = phase.survey_block(t, p, 5.0)
+    assert near.any()
+    for i in range(400):
+        assert phase.survey_float(float(t[i]), float(p[i]), 5.0) == (regions[i], near[i])
