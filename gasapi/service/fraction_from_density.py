@@ -117,6 +117,7 @@ class _Blend:
             self._context,
             self._question.state._replace(
                 gas=self.spec(x),
+                accept_two_phase=False,
                 model=self.model or self._question.state.model,
                 input_uncertainty=None
                 if uncertainty is None

@@ -90,7 +90,8 @@ def answer_molar_mass(
     """
     pressure, temperature = question.state.pressure, question.state.temperature
     ideal = question.density * GAS_CONSTANT * temperature / pressure
-    like = solve_state(context, question.state) if question.has_like else None
+    # the Z of two phases together would be that of neither
+    like = solve_state(context, question.state._replace(accept_two_phase=False)) if question.has_like else None
     if like is not None and is_bad(like):
         return MolarMassAnswer(like, MolarMassResult())
     candidates = tuple(sorted(_candidates(context, question, ideal, pause), key=lambda c: (abs(c.relative_difference), c.id)))
@@ -146,7 +147,7 @@ def _candidates(context: Context, question: MolarMassQuestion, ideal: float, pau
             pause()
         answer = solve_state(
             context,
-            question.state._replace(gas=GasSpec(gas.id), model="auto", ambient_pressure=None, input_uncertainty=None),
+            question.state._replace(gas=GasSpec(gas.id), model="auto", ambient_pressure=None, accept_two_phase=False),
         )
         if answer.density is None:
             continue

@@ -93,7 +93,7 @@ class PressureDecayAnswer(NamedTuple):
 
 def lost_mass_uncertainty(
     volume: float, start: StateAnswer, end: StateAnswer, uncertainty: InputUncertainty, correlation: Correlation
-) -> float:
+) -> float | None:
     """Return the expanded uncertainty (k = 2) of a lost mass, kg.
 
     :param volume: m3
@@ -101,14 +101,15 @@ def lost_mass_uncertainty(
     :param end: with sensitivities
     :param uncertainty: standard, Pa and K
     :param correlation: of the start with the end reading, [-]
+    :returns: None where a state has no sensitivities, as two phases together have not
     """
     variance = 0.0
     for first, last, u, r in (
         (start.density_pressure, end.density_pressure, uncertainty.pressure, correlation.pressure),
         (start.density_temperature, end.density_temperature, uncertainty.temperature, correlation.temperature),
     ):
-        assert first is not None
-        assert last is not None
+        if first is None or last is None:
+            return None
         a, b = volume * first * u, volume * last * u
         # (a - b)^2 and the rest kept apart, so that full correlation of equal parts gives zero and not rounding
         variance += (a - b) * (a - b) + 2.0 * (1.0 - r) * a * b
@@ -128,7 +129,7 @@ def answer_pressure_decay(context: Context, question: PressureDecayQuestion) -> 
     expanded = None
     if question.uncertainty is not None:
         expanded = lost_mass_uncertainty(question.volume, start, end, question.uncertainty, question.correlation)
-        if lost < -expanded:
+        if expanded is not None and lost < -expanded:
             warnings = (*warnings, _GAINED)
     if question.reference is not None:
         temperature = question.reference.temperature

@@ -178,6 +178,11 @@ JOB_OPERATIONS: Final[tuple[Operation, ...]] = (
         "The saturation curve of a pure gas, dew and bubble line of a mixture, the water line of a wet one, and named points.",
         questions.PhaseBoundarySchema,
         answers.PhaseBoundaryAnswerSchema,
+        Example(
+            "propane",
+            "The saturation curve of propane",
+            {"gas": "propane", "units": {"pressure": "bar", "temperature": "degC"}},
+        ),
     ),
     _job(
         "lookup-table",

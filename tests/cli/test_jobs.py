@@ -87,6 +87,15 @@ COMMANDS = (
         {"gas": "carbon dioxide", "pressure": 50, "temperature": 40, "units": {"pressure": "bar", "temperature": "degC"}},
     ),
     (
+        "phase-boundary methane=0.9 ethane=0.1 --unit pressure=barg --ambient-pressure 100000",
+        "phase-boundary",
+        {
+            "gas": {"fractions": {"methane": 0.9, "ethane": 0.1}},
+            "units": {"pressure": "barg"},
+            "ambient_pressure": 100000,
+        },
+    ),
+    (
         "lookup-table nitrogen -p 1 60 bar -t -20 80 degC --tolerance 0.01",
         "lookup-table",
         {

@@ -554,3 +554,22 @@ def test_phase_boundary_refusals(client):
     assert 422 == response.status_code
     assert ["/pressure"] == [fault["pointer"] for fault in response.get_json()["errors"]]
     assert 422 == client.post("/v1/phase-boundary", json={}).status_code
+
+
+def test_two_phases_that_are_accepted_have_numbers_and_no_uncertainty(client):
+    """A mixture inside its boundary, asked with accept_two_phase: uncertain, never a failure of the service."""
+    gas = {"fractions": {"methane": 0.85, "ethane": 0.08, "n-butane": 0.07}}
+    inside = {"pressure": 50e5, "temperature": 270.0}
+    common = {"gas": gas, "accept_two_phase": True}
+    state = client.post("/v1/state", json={**common, **inside}).get_json()
+    assert "two-phase" == state["phase"]["region"]
+    uncertain = {"input_uncertainty": {"pressure": 100, "temperature": 0.1}}
+    vessel = client.post("/v1/vessel", json={**common, **inside, "volume": 2, **uncertain}).get_json()
+    assert 2.0 * state["result"]["density"] == pytest.approx(vessel["result"]["mass"], rel=1e-12)
+    assert "uncertain" == vessel["quality"]["level"]
+    decay = {**common, "volume": 1, "duration": 60, "start": inside, "end": {**inside, "pressure": 49e5}, **uncertain}
+    answer = client.post("/v1/pressure-decay", json=decay).get_json()
+    assert answer["result"]["lost_mass"] is not None
+    assert None is answer["result"]["resolved"]
+    like = {"density": 40, **inside, "like": gas, "accept_two_phase": True}
+    assert "bad" == client.post("/v1/molar-mass", json=like).get_json()["quality"]["level"]
