@@ -7,11 +7,14 @@ alone (mixture parameters, saturation functions) is cached apart from work that 
 from __future__ import annotations
 
 from collections.abc import Hashable
+from dataclasses import replace
 from functools import cached_property
 from typing import Final, NamedTuple
 
+from gasapi.engine.certified import CertifiedFluid
 from gasapi.engine.models import gerg_2008, reference
 from gasapi.engine.models.gerg_2008 import GergFluid, GergSystem
+from gasapi.engine.models.helmholtz_fluid import HelmholtzFluid
 from gasapi.engine.models.reference import ReferenceFluid
 from gasapi.engine.phase.saturation import SaturationCurve
 from gasapi.engine.protocol import Fluid
@@ -41,6 +44,9 @@ DEFAULT_AMBIENT_PRESSURE: Final = 101325.0
 _PAIR_SHARE: Final = 1e-3
 _COMBINING_RULE_UNCERTAINTY: Final = 0.005
 
+# errors for which certified tables are kept
+_ACCURACIES: Final = (1e-1, 1e-2, 1e-3, 1e-4, 1e-5, 1e-6, 1e-7, 1e-8, 1e-9, 1e-10, 1e-11, 1e-12)
+
 
 class CacheSizes(NamedTuple):
     """How many entries each cache may hold."""
@@ -62,6 +68,7 @@ class GasModels:
         self.gas = gas
         self._context = context
         self._prepared: dict[str, PreparedModel] = {}
+        self._certified: dict[tuple[str, float], PreparedModel] = {}
         self._limits: dict[str, tuple[Limits, Limits]] = {}
         self._uncertainty: dict[str, GeneralisedUncertainty] = {}
 
@@ -118,6 +125,20 @@ class GasModels:
         held = self._prepared.get(model)
         if held is None:
             held = self._prepared[model] = self._prepare(model)
+        return held
+
+    def certified(self, model: str, accuracy: float | None) -> PreparedModel:
+        """Return a model made ready for the gas, with certified tables where an error of density is allowed, [-].
+
+        The error that is kept to is the next power of ten below, so that few tables serve all.
+        """
+        prepared = self.prepared(model)
+        if accuracy is None or not isinstance(prepared.fluid, HelmholtzFluid):
+            return prepared
+        kept = next((power for power in _ACCURACIES if power <= accuracy), _ACCURACIES[-1])
+        held = self._certified.get((model, kept))
+        if held is None:
+            held = self._certified[model, kept] = replace(prepared, fluid=CertifiedFluid(prepared.fluid, kept))
         return held
 
     def _prepare(self, model: str) -> PreparedModel:

@@ -18,6 +18,7 @@ from typing import Any, Final, Literal, NamedTuple, cast
 import numpy as np
 from numpy.typing import NDArray
 
+from gasapi.engine.certified import CertifiedFluid
 from gasapi.engine.elementary import Array
 from gasapi.engine.models.helmholtz_fluid import BLOCK_ROWS
 from gasapi.engine.phase.region import Region
@@ -42,6 +43,7 @@ __all__ = [
     "SeriesRows",
     "SeriesSummary",
     "Survey",
+    "TableCertificate",
     "VaryingGasAnswer",
     "input_flags",
 ]
@@ -56,6 +58,7 @@ _NO_MODEL: Final = int(Reason.NO_MODEL)
 _TWO_PHASE: Final = int(Reason.TWO_PHASE)
 _OUTSIDE: Final = int(Reason.OUTSIDE_VALIDITY | Reason.OUTSIDE_LIMITS)
 _UNKNOWN: Final = int(Region.UNKNOWN)
+_LIQUID: Final = int(Region.LIQUID)
 
 StatusKind = Literal["opc-ua", "opc-classic"]
 
@@ -122,8 +125,19 @@ class VaryingGasAnswer(NamedTuple):
     components: tuple[str, ...]
 
 
+class TableCertificate(NamedTuple):
+    """What certified tables did: the error that was allowed, the largest one of the patches used, rows answered by them."""
+
+    accuracy: float
+    largest_error: float | None
+    rows: int
+
+
 class SeriesSummary(NamedTuple):
-    """What holds for all rows that were answered: rows by level, the equation with the largest uncertainty of any row."""
+    """What holds for all rows that were answered: rows by level, the equation with the largest uncertainty of any row.
+
+    ``certificate`` is given where the question allows tables.
+    """
 
     gas: GasAnswer | VaryingGasAnswer
     model: ModelAnswer
@@ -131,6 +145,7 @@ class SeriesSummary(NamedTuple):
     counts: tuple[tuple[str, int], ...]
     cautions: tuple[str, ...]
     data: str
+    certificate: TableCertificate | None
 
 
 def input_flags(status: Array, kind: StatusKind) -> NDArray[np.int64]:
@@ -235,7 +250,7 @@ class Series:
             self.components = self._all_components(gas)
             self._place = {id: i for i, id in enumerate(self.components)}
         elif self._choice.model is not None:
-            self._single = self._models.prepared(self._choice.model)
+            self._single = self._models.certified(self._choice.model, question.accuracy)
 
     def _all_components(self, gas: RowComposition) -> tuple[str, ...]:
         """Return the ids of all components that the columns can bring; their names were looked up before."""
@@ -306,6 +321,8 @@ class Series:
             volume = 1.0 / molar
             z = p / (molar * model.fluid.gas_constant * t)
         self._tally.uncertainty(model, t, p, molar, flags, block.uncertainty)
+        if isinstance(model.fluid, CertifiedFluid):
+            self._tally.certificate(model.fluid, t, p, np.isfinite(block.uncertainty) & (block.region != _LIQUID))
         return SeriesRows(density, z, volume, flags, block.region)
 
     def _by_composition(self, columns: Columns) -> SeriesRows:
@@ -349,7 +366,8 @@ class Series:
             return None, ()
         if why_not(self._choice.model, resolved) is not None:
             return None, ()
-        return self._context.models(resolved).prepared(self._choice.model), resolved.components
+        models = self._context.models(resolved)
+        return models.certified(self._choice.model, self._question.accuracy), resolved.components
 
     def summary(self) -> SeriesSummary:
         """Return what holds for all rows that were answered so far."""
@@ -373,6 +391,9 @@ class Series:
             tuple(zip(LEVELS, tally.counts, strict=True)),
             models.cautions,
             self._context.data,
+            None
+            if self._question.accuracy is None
+            else TableCertificate(self._question.accuracy, tally.largest_error, tally.table_rows),
         )
 
 
@@ -386,6 +407,8 @@ class _Tally:
     def __init__(self) -> None:
         self.counts = [0, 0, 0]
         self._outside = False
+        self.largest_error: float | None = None
+        self.table_rows = 0
         self._largest: float | None = None
         self._basis: str | None = None
 
@@ -412,6 +435,13 @@ class _Tally:
         if self._largest is None or largest > self._largest:
             self._largest = largest
             self._basis = model.uncertainty.basis_at(float(t[at]), float(p[at]), float(molar[at]))
+
+    def certificate(self, fluid: CertifiedFluid, t: Array, p: Array, answered: NDArray[np.bool_]) -> None:
+        """Count the rows that a table answered, with its largest error."""
+        found = fluid.certificate(t[answered], p[answered])
+        self.table_rows += found.rows
+        if found.largest_error is not None and (self.largest_error is None or found.largest_error > self.largest_error):
+            self.largest_error = found.largest_error
 
     def model_answer(self, model: PreparedModel, because: str) -> ModelAnswer:
         v = model.validity

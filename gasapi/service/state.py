@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from typing import Final, NamedTuple
 
+import numpy as np
+
+from gasapi.engine.certified import CertifiedFluid
 from gasapi.engine.phase.region import REGION_NAMES, Region
 from gasapi.service.answers import GasAnswer, ModelAnswer, PhaseAnswer, QualityAnswer, StateAnswer
 from gasapi.service.context import Context, GasModels
@@ -25,6 +28,7 @@ _TWO_PHASE_ACCEPTED: Final = int(Reason.TWO_PHASE_ACCEPTED)
 _NEAR_CRITICAL: Final = int(Reason.NEAR_CRITICAL)
 _INPUT_BAD: Final = int(Reason.INPUT_BAD)
 _UNKNOWN: Final = int(Region.UNKNOWN)
+_LIQUID: Final = int(Region.LIQUID)
 
 CRITICAL_AMPLIFICATION_MOST: Final = 1e3
 """The most by which a flat isotherm makes the uncertainty of a density larger than stated."""
@@ -65,7 +69,7 @@ def solve_state(context: Context, question: StateQuestion) -> StateAnswer:
     cautions = models.cautions
     if choice.model is None:
         return _no_model(context, models, question, choice.because, assumed | int(Reason.NO_MODEL), cautions)
-    model = models.prepared(choice.model)
+    model = models.certified(choice.model, question.accuracy)
     margin = context.dew_point_margin if question.dew_point_margin is None else question.dew_point_margin
     point = evaluate_float(model, temperature, pressure, margin)
     flags = point.flags | assumed
@@ -110,12 +114,25 @@ def solve_state(context: Context, question: StateQuestion) -> StateAnswer:
         density_temperature=slope_t,
         density_expanded_uncertainty=expanded,
         phase=phase_answer(model, temperature, pressure, point, margin),
-        model=model_answer(model, temperature, pressure, point, uncertainty, choice.because),
+        model=model_answer(
+            model, temperature, pressure, point, uncertainty, choice.because + table_words(model, point, temperature, pressure)
+        ),
         quality=quality_of(flags),
         cautions=cautions,
         data=context.data,
         two_phase=None if two_phase is None else two_phase.answer,
     )
+
+
+def table_words(model: PreparedModel, point: Point, temperature: float, pressure: float) -> str:
+    """Return what is to be said of a density that a certified table gave, nothing where it was solved for."""
+    fluid = model.fluid
+    if not isinstance(fluid, CertifiedFluid) or point.flags & BAD or point.region == _LIQUID:
+        return ""
+    certificate = fluid.certificate(np.array([temperature]), np.array([pressure]))
+    if certificate.largest_error is None:
+        return ""
+    return f"; density from a certified table, its largest error {certificate.largest_error:.2g}"
 
 
 def ambient_flags(ambient: float | None, pressure: float) -> int:

@@ -110,9 +110,18 @@ def json_pieces(
         "units": dict(units.names),
         "model": _model(summary),
         "cautions": summary.cautions,
+        **_certificate(summary),
         "trace": {"cached": False, "version": __version__, "data": summary.data},
     }
     yield b"," + orjson.dumps(rest)[1:]
+
+
+def _certificate(summary: SeriesSummary) -> dict[str, Any]:
+    found = summary.certificate
+    if found is None:
+        return {}
+    members = {"accuracy": found.accuracy, "largest_error": found.largest_error, "table_rows": found.rows}
+    return {"certificate": members}
 
 
 def _reasons(flags: NDArray[np.int64]) -> Iterator[bytes]:

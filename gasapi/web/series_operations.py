@@ -62,6 +62,13 @@ _CHROMATOGRAPH: Final[dict[str, Any]] = {
     "units": {"pressure": "bara", "temperature": "degC"},
 }
 
+_TABLE: Final[dict[str, Any]] = {
+    "gas": "nitrogen",
+    "pressure": [4e6, 4.1e6, 4.2e6],
+    "temperature": 298.15,
+    "accuracy": 1e-6,
+}
+
 SERIES_OPERATIONS: Final[tuple[Operation, ...]] = (
     Operation(
         "post",
@@ -81,6 +88,7 @@ SERIES_OPERATIONS: Final[tuple[Operation, ...]] = (
         examples=(
             Example("history", "A history with a missing and an uncertain reading", _HISTORY),
             Example("chromatograph", "A composition by the row", _CHROMATOGRAPH),
+            Example("table", "From a certified table, with an error of 1 part in a million at most", _TABLE),
             Example("rows", "The same as CSV rows", _HISTORY, accept=str(CSV_WITH_HEADER)),
         ),
     ),

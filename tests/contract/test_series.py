@@ -269,3 +269,24 @@ def test_other_ways_to_ask(client):
     assert client.post("/v1/series", data=b"x", content_type="text/plain").status_code == 415
     assert client.post("/v1/series", json=question, headers={"Accept": "image/png"}).status_code == 406
     assert client.post("/v1/series", data=b"{", content_type="application/json").status_code == 400
+
+
+@pytest.mark.parametrize("gas", ["nitrogen", {"fractions": {"methane": 0.9, "ethane": 0.1}}], ids=str)
+def test_a_certified_table_on_request(ask, client, gas):
+    """Within the error that is allowed and stated; a row is still the single state that allows the same; others are exact."""
+    rng = np.random.default_rng(6)
+    pressure, temperature = rng.uniform(1e5, 1.5e7, 200).tolist(), rng.uniform(200.0, 400.0, 200).tolist()
+    question = {"gas": gas, "pressure": pressure, "temperature": temperature}
+    exact, table = ask(question)[1], ask({**question, "accuracy": 1e-6})[1]
+    assert "certificate" not in exact
+    assert table["certificate"]["accuracy"] == 1e-6
+    assert table["certificate"]["table_rows"] > 100
+    assert table["certificate"]["largest_error"] <= 5e-7
+    pairs = zip(exact["result"]["density"], table["result"]["density"], strict=True)
+    errors = [abs(a / b - 1.0) for a, b in pairs if a is not None]
+    assert 0.0 < max(errors) <= 1e-6
+    for i in range(0, 200, 10):
+        asked = {"gas": gas, "pressure": pressure[i], "temperature": temperature[i], "model": table["model"]["id"]}
+        single = client.post("/v1/state", json={**asked, "accuracy": 1e-6}).get_json()
+        assert single["result"]["density"] == table["result"]["density"][i]
+        assert client.post("/v1/state", json=asked).get_json()["result"]["density"] == exact["result"]["density"][i]
