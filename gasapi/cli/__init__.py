@@ -10,7 +10,7 @@ import argparse
 from collections.abc import Sequence
 
 from gasapi import __version__
-from gasapi.cli import jobs, openapi, series, serve, state, token
+from gasapi.cli import jobs, openapi, series, serve, state, token, verify
 
 __all__ = ["main"]
 
@@ -25,7 +25,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     )
     parser.add_argument("--version", action="version", version=__version__)
     commands = parser.add_subparsers(dest="command", metavar="COMMAND", required=True)
-    for module in (serve, state, series, jobs, openapi, token):
+    for module in (serve, state, series, jobs, openapi, token, verify):
         module.add_parser(commands)
     options = parser.parse_args(arguments)
     code: int = options.run(options)

@@ -50,10 +50,20 @@ def add_parser(commands: Any) -> None:
         help="a file with the question as JSON, in place of all the above; - reads it from standard input",
     )
     parser.add_argument("--json", action="store_true", help="print the answer as the service gives it")
+    parser.add_argument(
+        "--replay",
+        type=Path,
+        metavar="ANSWER",
+        help="a file with a JSON answer: ask again what it answers and compare bit for bit (exit code 1 where they differ)",
+    )
     parser.set_defaults(run=_run)
 
 
 def _run(options: argparse.Namespace) -> int:
+    if options.replay is not None:
+        from gasapi.cli.replay import replay
+
+        return replay(options.replay)
     from gasapi.app import create_context
     from gasapi.errors import GasapiError
     from gasapi.service.state import answer_state

@@ -17,6 +17,8 @@ __all__ = ["ResolvedGas", "resolve_gas"]
 # fractions whose sum is off by more than the first are scaled and say so, by more than the second are refused
 _SCALED_ABOVE: Final = 1e-6
 _REFUSED_ABOVE: Final = 0.02
+# each fraction was rounded once when it was divided by the sum
+_ROUNDING: Final = 2.0**-51
 
 
 @dataclass(frozen=True, slots=True)
@@ -105,9 +107,10 @@ def _from_fractions(spec: GasSpec, catalogue: Catalogue, own: dict[str, Substanc
     total = math.fsum(shares.values())
     if not abs(total - 1.0) <= _REFUSED_ABOVE + 1e-12:
         raise FractionsInvalid(f"the fractions sum to {total:.9g}; they must sum to 1 within {_REFUSED_ABOVE}", None)
-    # scaling by the sum is exact where the sum is 1, and takes rounding out of it where it nearly is
     scaled = abs(total - 1.0) > _SCALED_ABOVE
-    parts = {k: v / total for k, v in shares.items() if v > 0.0}
+    # a sum that is 1 but for rounding is left alone, so that the fractions of an answer, asked again, stay what they are
+    divisor = 1.0 if abs(total - 1.0) <= _ROUNDING else total
+    parts = {k: v / divisor for k, v in shares.items() if v > 0.0}
     if len(parts) == 1:
         (only,) = parts
         substance = own.get(only.casefold())

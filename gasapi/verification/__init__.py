@@ -1,0 +1,1 @@
+"""Published check values, and their repetition on the machine where the program is installed. No HTTP, no caller's units."""
