@@ -13,6 +13,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
+from contextlib import ExitStack
 from typing import Any, Final, Literal, NamedTuple, cast
 
 import numpy as np
@@ -32,6 +33,7 @@ from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, LEVELS, Reason, level_codes
 from gasapi.service.questions import GasSpec
 from gasapi.service.selection import Choice, choose_for_rows
+from gasapi.service.share import Share, cores
 from gasapi.service.state import AMBIENT_SHARE, CRITICAL_AMPLIFICATION_MOST
 from gasapi.service.two_phase import split
 
@@ -45,11 +47,14 @@ __all__ = [
     "Survey",
     "TableCertificate",
     "VaryingGasAnswer",
+    "answer_share",
     "input_flags",
 ]
 
 # rows by which a generalised equation is chosen: every so many of a longer series
 _SURVEYED_ROWS: Final = 1 << 20
+# compositions in one block of rows from which on a second process pays
+_SHARED_FROM: Final = 100
 
 _INPUT_BAD: Final = int(Reason.INPUT_BAD)
 _INPUT_UNCERTAIN: Final = int(Reason.INPUT_UNCERTAIN)
@@ -101,6 +106,10 @@ class Columns(NamedTuple):
             None if self.flags is None else self.flags[start:stop],
             None if self.fractions is None else self.fractions[start:stop],
         )
+
+    def take(self, rows: NDArray[np.intp]) -> Columns:
+        """Return the rows of some indices."""
+        return Columns(*(None if column is None else column[rows] for column in self))  # type: ignore[arg-type]
 
 
 class SeriesRows(NamedTuple):
@@ -225,6 +234,7 @@ class Series:
     :param question: what holds for all rows
     :param survey: what was seen of the rows
     :param pause: called between blocks of rows, so that a long series lets others have their turn
+    :param shares: whether very many compositions may be shared among processes
     :raises UnknownGas: for a name that nothing has
     :raises FractionsInvalid: for fractions that make no gas
     :raises UnknownModel: for a model id that no equation has
@@ -232,9 +242,15 @@ class Series:
     """
 
     def __init__(
-        self, context: Context, question: SeriesQuestion, survey: Survey, pause: Callable[[], None] = lambda: None
+        self,
+        context: Context,
+        question: SeriesQuestion,
+        survey: Survey,
+        pause: Callable[[], None] = lambda: None,
+        shares: bool = True,
     ) -> None:
         self._context = context
+        self._shares = shares
         self._question = question
         self._pause = pause
         self._models = context.models(context.gas(survey.gas()))
@@ -328,11 +344,43 @@ class Series:
     def _by_composition(self, columns: Columns) -> SeriesRows:
         assert columns.fractions is not None
         n = columns.temperature.size
-        density, z, volume, molar_mass = (np.full(n, np.nan) for _ in range(4))
-        fractions = np.full((n, len(self.components)), np.nan)
+        none = np.full((4, n), np.nan)
         flags = np.zeros(n, dtype=np.int64) if columns.flags is None else columns.flags.copy()
         region = np.full(n, _UNKNOWN, dtype=np.int8)
-        for rows, x in _compositions(columns.fractions):
+        rows = SeriesRows(none[0], none[1], none[2], flags, region, none[3], np.full((n, len(self.components)), np.nan))
+        groups = _compositions(columns.fractions)
+        others = cores() - 1 if self._shares and len(groups) >= _SHARED_FROM else 0
+        with ExitStack() as stack:
+            shares = [
+                (stack.enter_context(self._share(columns, groups[i :: others + 1])), groups[i :: others + 1])
+                for i in range(1, others + 1)
+            ]
+            self._answer_groups(columns, groups[:: others + 1], rows)
+            for share, some in shares:
+                found = share.result()
+                if found is None:
+                    self._answer_groups(columns, some, rows)
+                    continue
+                part, tally = found
+                at = np.concatenate([group for group, _ in some])
+                whole: Any
+                for whole, column in zip(rows, part, strict=True):
+                    whole[at] = column
+                self._tally.join(tally)
+        self._tally.levels(flags)
+        return rows
+
+    def _share(self, columns: Columns, groups: Sequence[tuple[NDArray[np.intp], Array]]) -> Share:
+        assert self._choice.model is not None
+        at = np.concatenate([group for group, _ in groups])
+        return Share(self._context.site, self._question._replace(model=self._choice.model), columns.take(at))
+
+    def _answer_groups(self, columns: Columns, groups: Sequence[tuple[NDArray[np.intp], Array]], answers: SeriesRows) -> None:
+        """Answer the rows of some compositions, into columns for all rows."""
+        density, z, volume, flags, region, molar_mass, fractions = answers
+        assert molar_mass is not None
+        assert fractions is not None
+        for rows, x in groups:
             model, gas = self._of_row(x)
             if model is None:
                 t, p = columns.temperature.take(rows), columns.pressure.take(rows)
@@ -349,8 +397,6 @@ class Series:
                 fractions[at] = 0.0
                 for component, share in zip(gas, model.fractions, strict=True):
                     fractions[at, self._place[component]] = share
-        self._tally.levels(flags)
-        return SeriesRows(density, z, volume, flags, region, molar_mass, fractions)
 
     def _of_row(self, fractions: Array) -> tuple[PreparedModel | None, tuple[str, ...]]:
         """Return the equation at the composition of a row, None where the composition is bad."""
@@ -397,6 +443,14 @@ class Series:
         )
 
 
+def answer_share(context: Context, question: SeriesQuestion, columns: Columns) -> tuple[SeriesRows, _Tally]:
+    """Return the rows of a share of a series and what was found of uncertainty, for the process that asked for it."""
+    survey = Survey(question)
+    survey.add(columns)
+    series = Series(context, question, survey, shares=False)
+    return series.answer(columns), series._tally
+
+
 def _no_model(because: str) -> ModelAnswer:
     return ModelAnswer("none", "no equation", "", (0.0, 0.0), (0.0, 0.0), False, None, "estimate", because)
 
@@ -435,6 +489,14 @@ class _Tally:
         if self._largest is None or largest > self._largest:
             self._largest = largest
             self._basis = model.uncertainty.basis_at(float(t[at]), float(p[at]), float(molar[at]))
+
+    def join(self, other: _Tally) -> None:
+        """Take over what another one found of uncertainty and of tables; levels are counted by the flags of all rows."""
+        if other._largest is not None and (self._largest is None or other._largest > self._largest):
+            self._largest, self._basis = other._largest, other._basis
+        self.table_rows += other.table_rows
+        if other.largest_error is not None and (self.largest_error is None or other.largest_error > self.largest_error):
+            self.largest_error = other.largest_error
 
     def certificate(self, fluid: CertifiedFluid, t: Array, p: Array, answered: NDArray[np.bool_]) -> None:
         """Count the rows that a table answered, with its largest error."""

@@ -37,6 +37,7 @@ _BROKEN = "the body cannot be read: its chunks are broken, or the connection end
 _FRACTION = "fraction."
 _KNOWN = ("pressure", "temperature", "timestamps", "input_status")
 _LONGEST_QUERY = 1 << 16
+_GATHERED_ROWS = 200_000
 
 
 class CsvRows(NamedTuple):
@@ -86,13 +87,19 @@ class CsvSeries:
         return self._plan.timestamps is not None
 
     def blocks(self) -> Iterator[CsvRows]:
-        """Return the rows in blocks, from the beginning."""
+        """Return the rows in blocks, from the beginning.
+
+        Where the gas changes by the row they are gathered into large ones, so that a composition is met in few of them.
+        """
         plan = self._plan
         places = [plan.pressure, plan.temperature, plan.timestamps, plan.status, *(i for _, i, _ in plan.fractions)]
         wanted = sorted({i for i in places if i is not None})
         self._body.seek(self._start)
-        for block in read_blocks(self._body, plan.fields, wanted):
-            yield self._rows(block, {index: block.columns[at] for at, index in enumerate(wanted)})
+        rows = (
+            self._rows(block, {index: block.columns[at] for at, index in enumerate(wanted)})
+            for block in read_blocks(self._body, plan.fields, wanted)
+        )
+        return _gathered(rows) if plan.fractions else rows
 
     def close(self) -> None:
         """Let the body go."""
@@ -135,6 +142,33 @@ class CsvSeries:
         columns = self.terms.columns(pressure, temperature, status, fractions)
         timestamps = None if plan.timestamps is None else fields[plan.timestamps]
         return CsvRows(block.texts, columns, timestamps, unreadable)
+
+
+def _gathered(blocks: Iterator[CsvRows]) -> Iterator[CsvRows]:
+    """Return blocks joined until they have ``_GATHERED_ROWS`` rows."""
+    held: list[CsvRows] = []
+    count = 0
+    for block in blocks:
+        held.append(block)
+        count += len(block.texts)
+        if count >= _GATHERED_ROWS:
+            yield _joined(held)
+            held, count = [], 0
+    if held:
+        yield _joined(held)
+
+
+def _joined(blocks: Sequence[CsvRows]) -> CsvRows:
+    texts: list[bytes] = []
+    timestamps: list[bytes] = []
+    unreadable: dict[int, int] = {}
+    for block in blocks:
+        unreadable |= {len(texts) + row: line for row, line in block.unreadable.items()}
+        texts += block.texts
+        timestamps += block.timestamps or ()
+    columns = zip(*(block.columns for block in blocks), strict=True)
+    joined: list[Any] = [None if column[0] is None else np.concatenate(column) for column in columns]
+    return CsvRows(texts, Columns(*joined), timestamps if blocks[0].timestamps is not None else None, unreadable)
 
 
 class CsvSeriesReader:
