@@ -33,6 +33,7 @@ _X_TOLERANCE: Final = 1e-14
 # a mixture is found where its state has the reading again to this, relative; else the root lay on a branch without a claim
 _AGREEMENT: Final = 1e-8
 _STEP: Final = 1e-4
+_LEAST_PRESSURE: Final = 1e-9
 
 
 class SameGas(GasapiError):
@@ -107,7 +108,13 @@ class _Blend:
         assert self.model is not None
         # many compositions that nobody asks for again are not to fill the cache of the context
         prepared = GasModels(resolve_gas(self.spec(x), self._context.catalogue), self._context).prepared(self.model)
-        root = prepared.fluid.density(self._question.state.temperature, self._question.state.pressure, branch)
+        temperature, pressure, limits = self._question.state.temperature, self._question.state.pressure, prepared.extended
+        if not (
+            limits.temperature_min <= temperature <= limits.temperature_max
+            and _LEAST_PRESSURE <= pressure <= limits.pressure_max
+        ):
+            return None
+        root = prepared.fluid.density(temperature, pressure, branch)
         return root.density * prepared.fluid.molar_mass if root.status == Status.CONVERGED else None
 
     def state(self, x: float) -> StateAnswer:

@@ -47,6 +47,7 @@ _EDGE: Final = 513
 _HALVINGS: Final = 60
 _JUMP: Final = 1e-3
 _NARROWEST: Final = 1e-4
+_LARGEST: Final = 3e38
 _PIECE: Final = 8192
 _POINTS: Final = 110_000
 _LEAST_INSIDE: Final = 5
@@ -247,7 +248,8 @@ def answer_lookup_table(
 
 def _check_width(quantity: str, ends: tuple[float, float]) -> None:
     low, high = ends
-    if not high - low >= _NARROWEST * max(abs(low), abs(high)) or not np.isfinite(np.float32(high)):
+    size = max(abs(low), abs(high))
+    if not (high - low >= _NARROWEST * size and size <= _LARGEST):
         raise RangeTooNarrow(quantity, low, high)
 
 

@@ -29,6 +29,8 @@ DEFAULT_TOLERANCE: Final = 0.01
 """How far a candidate's density may lie from a reading whose uncertainty is not given, relative."""
 
 _MOST_NAMED: Final = 12
+_HOTTEST: Final = 1e6
+_HIGHEST: Final = 1e13
 _BETWEEN_PAUSES: Final = 8
 _FAR_FROM_IDEAL: Final = 0.2
 _SATURATION_SLACK: Final = 3.0
@@ -94,6 +96,8 @@ def answer_molar_mass(
     like = solve_state(context, question.state._replace(accept_two_phase=False)) if question.has_like else None
     if like is not None and is_bad(like):
         return MolarMassAnswer(like, MolarMassResult())
+    if not (temperature < _HOTTEST and pressure < _HIGHEST):
+        return MolarMassAnswer(_unknown_gas(context, question, ideal, Reason.INPUT_BAD), MolarMassResult())
     candidates = tuple(sorted(_candidates(context, question, ideal, pause), key=lambda c: (abs(c.relative_difference), c.id)))
     warnings, caution = _words(candidates, like is None)
     state = _unknown_gas(context, question, ideal) if like is None else like
@@ -195,8 +199,8 @@ def _possible(catalogue: Catalogue, gas: Gas, question: MolarMassQuestion, ideal
             return True
     if not may_be_gas:
         return False
-    # the powers of the formula, kept from running away at low temperature
-    tr = max(tr, 0.3)
+    # the powers of the formula, kept from running away
+    tr = min(max(tr, 0.3), 100.0)
     b = 0.083 - 0.422 / tr**1.6 + omega * (0.139 - 0.172 / tr**4.2)
     departure = b * pr / tr
     ratio = m / ideal
@@ -209,10 +213,12 @@ def _possible(catalogue: Catalogue, gas: Gas, question: MolarMassQuestion, ideal
     return (1.0 + departure) * (1.0 - slack) <= ratio <= (1.0 + departure) * (1.0 + slack)
 
 
-def _unknown_gas(context: Context, question: MolarMassQuestion, molar_mass: float) -> StateAnswer:
+def _unknown_gas(
+    context: Context, question: MolarMassQuestion, molar_mass: float, reason: Reason = Reason.PHASE_UNKNOWN
+) -> StateAnswer:
     """Return the state of an ideal gas of no known composition."""
     pressure, temperature = question.state.pressure, question.state.temperature
-    flags = ambient_flags(question.state.ambient_pressure, pressure) | int(Reason.PHASE_UNKNOWN)
+    flags = ambient_flags(question.state.ambient_pressure, pressure) | int(reason)
     return StateAnswer(
         gas=GasAnswer(None, (), molar_mass),
         pressure=pressure,

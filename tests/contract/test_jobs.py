@@ -477,6 +477,17 @@ def test_a_refused_range_names_a_state_that_is_two_phase(client, refuse):
     assert ["liquid", "gas"] == regions
 
 
+@pytest.mark.parametrize(("pressure", "temperature"), [(1e-300, 10175.8), (101325, 1e300), (1e300, 300), (1e-300, 1e-300)])
+@pytest.mark.parametrize("job", [*(job for job in GOOD if job != "lookup-table"), "pressure-decay"])
+def test_absurd_states_are_never_a_failure(client, job, pressure, temperature):
+    """Bad, or refused, or answered where the ideal limit still holds; never a 500."""
+    state = {"pressure": pressure, "temperature": temperature}
+    question = {**GOOD[job], "units": {}, **({"start": state, "end": state} if job == "pressure-decay" else state)}
+    assert client.post(f"/v1/{job}", json=question).status_code in (200, 422)
+    table = {**TABLE, "units": {}, "pressure": [pressure, 2.0 * pressure], "temperature": [temperature, 2.0 * temperature]}
+    assert client.post("/v1/lookup-table", json=table).status_code in (200, 422)
+
+
 @pytest.mark.parametrize("job", ["flow", "vessel", "pressure-decay", "comparison", "molar-mass", "fraction-from-density"])
 def test_a_bad_state_has_null_results(ask, job):
     """Far beyond every equation: null numbers and level bad, status 200."""
