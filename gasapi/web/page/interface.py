@@ -87,7 +87,8 @@ def schemas_of(document: Mapping[str, Any]) -> list[Schema]:
 def _call(document: Mapping[str, Any], path: str, method: str, operation: Mapping[str, Any], shared: list[Any]) -> Call:
     parameters = [_resolved(document, parameter) for parameter in (*shared, *operation.get("parameters", []))]
     request = _resolved(document, operation.get("requestBody", {}))
-    answers, refusals = [], []
+    answers: list[Answer] = []
+    refusals: list[Answer] = []
     for status, response in operation.get("responses", {}).items():
         found = _resolved(document, response)
         answer = Answer(status, found.get("description", ""), _bodies({}, found.get("content", {})))

@@ -66,20 +66,26 @@ class Visit:
         self.watch(self.page)
 
     def watch(self, page):
-        page.on(
-            "console",
-            lambda message: (
-                message.type in ("error", "warning") and self.errors.append(f"{message.text} {message.location.get('url')}")
-            ),
-        )
+        page.on("console", self._note)
         page.on("pageerror", lambda error: self.errors.append(str(error)))
         page.on("request", lambda request: self._is_here(request.url) or self.elsewhere.append(request.url))
+
+    def _note(self, message):
+        address = message.location.get("url", "")
+        # beside a bare JSON answer a browser looks for an icon by itself
+        if message.type in ("error", "warning") and not address.endswith("/favicon.ico"):
+            self.errors.append(f"{message.text} {address}")
 
     def _is_here(self, address: str) -> bool:
         return address.startswith((self.origin, "blob:" + self.origin, "data:"))
 
     def open(self, address: str = ""):
         self.page.goto(self.origin + address)
+        self.page.evaluate(SETTLED)
+        if any("ERR_NETWORK_CHANGED" in words for words in self.errors):
+            # an interface of this machine came or went, as when a container starts: Chromium drops what it was fetching
+            self.errors.clear()
+            self.page.reload()
         return self.page
 
     def settled(self):

@@ -2,6 +2,7 @@
 
 import { linear, spread, ticks } from "./axes.js";
 import { path, svg } from "./elements.js";
+import { Labels } from "./labels.js";
 import { LEFT, RIGHT } from "./map.js";
 import { brief, shown } from "./numbers.js";
 
@@ -11,15 +12,16 @@ const DASHES = ["8 3", "2 3", "10 3 2 3", "5 5", "1 4", "12 4", "3 2 8 2", "6 2 
 
 /** Draw the curves of a scene into a place and return its scales. */
 export function drawCurves(place, scene) {
-  const width = Math.max(240, place.clientWidth);
-  const height = place.clientHeight;
+  const width = scene.width || Math.max(240, place.clientWidth);
+  const height = scene.width ? scene.width / 2 : place.clientHeight;
   const { quantity, isotherms, others, ranges } = scene;
   const x = linear(ranges.pressure, [LEFT, width - RIGHT]);
   const y = linear(valueRange(scene), [height - BOTTOM, TOP]);
   const picture = svg("svg", { viewBox: `0 0 ${width} ${height}`, height, "aria-hidden": "true" });
   axes(picture, scene, x, y, width, height);
   const labels = [];
-  for (const curve of isotherms) {
+  const inside = [];
+  for (const curve of [...isotherms].sort((a, b) => Number(a.here) - Number(b.here))) {
     const drawn = curve.here ? "curve here" : "curve";
     for (const liquid of [false, true]) {
       const points = curve.pressure.map((p, n) => {
@@ -28,13 +30,17 @@ export function drawCurves(place, scene) {
       });
       picture.append(svg("path", { class: liquid ? `${drawn} liquid` : drawn, d: path(points) }));
     }
-    label(picture, labels, curve, quantity, x, y, `${brief(curve.temperature, 5)} ${scene.units.temperature.sign}`);
+    label(labels, inside, curve, quantity, x, y, `${brief(curve.temperature, 5)} ${scene.units.temperature.sign}`);
   }
   others.forEach((curve, n) => {
     const points = curve.pressure.map((p, i) => (curve[quantity][i] === null ? null : [x(p), y(curve[quantity][i])]));
     picture.append(svg("path", { class: "curve other", "stroke-dasharray": DASHES[n % DASHES.length], d: path(points) }));
   });
   if (others.length) namesOfOthers(picture, others, quantity, x, y, width);
+  const names = new Labels(picture, { left: LEFT, right: width, top: TOP, bottom: height - BOTTOM });
+  for (const { px, py, words, here } of inside.reverse()) {
+    names.write(words, [[px + 5, py + 10], [px - 6, py + 18, "end"]], here ? "" : "quiet", { "font-weight": here ? 600 : 400 });
+  }
   for (const { at, words, here } of spread(labels, 15, TOP + 6, height - BOTTOM)) {
     picture.append(svg("text", { class: here ? "" : "quiet", "font-weight": here ? 600 : 400, x: width - RIGHT + 6, y: at + 4 }, words));
   }
@@ -46,13 +52,13 @@ export function drawCurves(place, scene) {
 }
 
 /** A curve has its name where its gas ends: at the edge of the picture, or where it condenses. */
-function label(picture, labels, curve, quantity, x, y, words) {
+function label(labels, inside, curve, quantity, x, y, words) {
   const last = curve[quantity].findLastIndex((value, n) => value !== null && curve.region[n] !== "liquid");
   const end = last >= 0 ? last : curve[quantity].findLastIndex((value) => value !== null);
   if (end < 0) return;
   const [px, py] = [x(curve.pressure[end]), y(curve[quantity][end])];
   if (end >= curve.pressure.length - 3) labels.push({ at: py, words, here: curve.here });
-  else picture.append(svg("text", { class: curve.here ? "halo" : "quiet halo", "font-weight": curve.here ? 600 : 400, x: px + 5, y: py + 10 }, words));
+  else inside.push({ px, py, words, here: curve.here });
 }
 
 /** Names of other equations stand on their curves, at places that differ so that they do not cover each other. */
@@ -81,7 +87,7 @@ function axes(picture, { units, quantity, ranges }, x, y, width, height) {
   picture.append(svg("rect", { class: "edge", x: LEFT, y: TOP, width: width - LEFT - RIGHT, height: height - TOP - BOTTOM }));
   picture.append(svg("text", { class: "quiet", x: width - RIGHT + 6, y: height - BOTTOM + 17 }, units.pressure.sign));
   const sign = quantity === "density" ? units.density.sign : "Z";
-  picture.append(svg("text", { class: "quiet", x: LEFT - 7, y: height - BOTTOM + 17, "text-anchor": "end" }, sign));
+  picture.append(svg("text", { class: "quiet", x: LEFT - 7, y: height - 8, "text-anchor": "end" }, sign));
 }
 
 function valueRange({ quantity, isotherms, others, answer }) {

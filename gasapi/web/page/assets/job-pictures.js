@@ -41,7 +41,7 @@ export function meterPicture(place, { result, units }, context, body) {
     place,
     [`density, ${signOf(units.density)}`, "multiply by"],
     [0, high],
-    [0, Math.max(1.2, 1.15 * result.correction_factor)],
+    [0, 1.05 * (high / design) ** power],
     "The correction over the density that flows through the meter",
   );
   const points = Array.from({ length: 81 }, (_, n) => (high * n) / 80).map((density) => [x(density), y((density / design) ** power)]);

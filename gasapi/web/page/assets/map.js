@@ -2,6 +2,7 @@
 
 import { linear, snapped, ticks } from "./axes.js";
 import { path, svg } from "./elements.js";
+import { Labels } from "./labels.js";
 import { brief } from "./numbers.js";
 import { differenceSign, fromSi } from "./units.js";
 
@@ -12,8 +13,8 @@ const BOTTOM = 34;
 
 /** Draw the map of a scene into a place and return its scales. */
 export function drawMap(place, scene) {
-  const width = Math.max(240, place.clientWidth);
-  const height = place.clientHeight;
+  const width = scene.width || Math.max(240, place.clientWidth);
+  const height = scene.width ? scene.width / 2 : place.clientHeight;
   const x = linear(scene.ranges.pressure, [LEFT, width - RIGHT]);
   const y = linear(scene.ranges.temperature, [height - BOTTOM, TOP]);
   const picture = svg("svg", { viewBox: `0 0 ${width} ${height}`, height, "aria-hidden": "true" });
@@ -23,10 +24,14 @@ export function drawMap(place, scene) {
   axes(picture, scene, x, y, width, height);
   const inside = svg("g", { "clip-path": "url(#map-inside)" });
   picture.append(inside);
-  range(picture, inside, scene, x, y, width);
-  design(picture, inside, scene, x, y);
-  boundary(picture, inside, scene, x, y, width, height);
-  state(picture, scene, x, y, width, height);
+  const labels = new Labels(picture, { left: LEFT + 2, right: width - RIGHT - 2, top: TOP + 1, bottom: height - BOTTOM - 1 });
+  const [px, py] = [x(scene.pressure), y(scene.temperature)];
+  labels.keep(px - 11, py - 18, px + 11, py + 2);
+  range(inside, scene, x, y);
+  design(inside, scene, x, y);
+  boundary(inside, scene, x, y);
+  state(picture, labels, scene, x, y, height);
+  named(labels, picture, scene, x, y);
   place.replaceChildren(picture);
   return { x, y };
 }
@@ -42,65 +47,75 @@ function axes(picture, { units, ranges }, x, y, width, height) {
   }
   picture.append(svg("rect", { class: "edge", x: LEFT, y: TOP, width: width - LEFT - RIGHT, height: height - TOP - BOTTOM }));
   picture.append(svg("text", { class: "quiet", x: width - RIGHT + 6, y: height - BOTTOM + 17 }, units.pressure.sign));
-  picture.append(svg("text", { class: "quiet", x: LEFT - 7, y: height - BOTTOM + 17, "text-anchor": "end" }, units.temperature.sign));
+  picture.append(svg("text", { class: "quiet", x: LEFT - 7, y: height - 8, "text-anchor": "end" }, units.temperature.sign));
 }
 
 /** The published range of the equation as a frame: only those sides of it that the picture holds. */
-function range(picture, inside, { answer, units, ambient }, x, y, width) {
+function range(inside, { answer, units, ambient }, x, y) {
   const validity = answer.model?.validity;
   if (!validity) return;
-  const [coldest, warmest] = validity.temperature.map((value) => y(fromSi(value, units.temperature, ambient)));
-  const highest = x(fromSi(validity.pressure[1], units.pressure, ambient));
-  const lowest = x(fromSi(validity.pressure[0], units.pressure, ambient));
   const far = (value) => Math.max(-1e4, Math.min(1e4, value));
-  const [left, right, top, bottom] = [far(lowest), far(highest), far(warmest), far(coldest)];
+  const [bottom, top] = validity.temperature.map((value) => far(y(fromSi(value, units.temperature, ambient))));
+  const [left, right] = validity.pressure.map((value) => far(x(fromSi(value, units.pressure, ambient))));
   inside.append(svg("rect", { class: "range", x: left, y: top, width: Math.max(0, right - left), height: Math.max(0, bottom - top) }));
-  const [bottomEdge, topEdge] = [y(y.low), y(y.high)];
-  const note = (at, words, anchor, level) =>
-    picture.append(svg("text", { class: "range-text halo", x: at, y: level, "text-anchor": anchor }, words));
-  if (coldest < bottomEdge - 4 && coldest > topEdge) note(width - RIGHT - 6, "published range begins", "end", coldest - 6);
-  if (warmest > topEdge + 4 && warmest < bottomEdge) note(width - RIGHT - 6, "published range ends", "end", warmest + 15);
-  if (highest > LEFT && highest < width - RIGHT - 4) note(highest - 6, "published range ends", "end", topEdge + 16);
 }
 
-function design(picture, inside, { question }, x, y) {
+function design(inside, { question }, x, y) {
   const window = question.window;
   if (!window) return;
   const [left, right] = [x(window.pressure_low), x(window.pressure_high)].sort((a, b) => a - b);
   const [top, bottom] = [y(window.temperature_low), y(window.temperature_high)].sort((a, b) => a - b);
   inside.append(svg("rect", { class: "design", x: left, y: top, width: right - left, height: bottom - top }));
-  inside.append(svg("text", { class: "design-text halo", x: Math.max(left, LEFT) + 6, y: Math.max(top, TOP) + 16 }, "design window"));
 }
 
-function boundary(picture, inside, { boundary: line, margin, units, answer, pressure }, x, y, width, height) {
+function boundary(inside, { boundary: line, margin, units, answer, pressure }, x, y) {
   if (!line?.pressure?.length) {
     const dew = answer.phase.dew_point_temperature;
     if (dew !== null) inside.append(svg("line", { class: "dew", x1: x(pressure) - 14, x2: x(pressure) + 14, y1: y(dew), y2: y(dew) }));
     return;
   }
   const points = line.pressure.map((value, n) => [x(value), y(line.temperature[n])]);
-  const floor = height - BOTTOM;
+  const floor = y(y.low);
   inside.append(svg("path", { class: "wet", d: `${path([[points[0][0], floor], ...points, [points.at(-1)[0], floor]])}Z` }));
-  const shift = y(0) - y(margin / units.temperature.scale);
-  inside.append(svg("path", { class: "near", d: path(points.map(([px, py]) => [px, py - shift])) }));
+  inside.append(svg("path", { class: "near", d: path(points.map(([px, py]) => [px, py - marginHeight(y, margin, units)])) }));
   inside.append(svg("path", { class: "dew", d: path(points) }));
-  const nearest = points.findLast(([px, py]) => px > LEFT + 90 && px < width - RIGHT - 4 && py - shift > TOP + 16 && py - shift < floor - 8);
-  if (nearest) {
-    const words = `warned within ${brief(margin, 3)} K`;
-    inside.append(svg("text", { class: "quiet halo", x: nearest[0] - 6, y: nearest[1] - shift - 7, "text-anchor": "end" }, words));
+}
+
+function marginHeight(y, margin, units) {
+  return y(0) - y(margin / units.temperature.scale);
+}
+
+/** Say what the lines are, the most telling words first, each where there is room. */
+function named(labels, picture, scene, x, y) {
+  const { boundary: line, margin, units, ambient, answer, question } = scene;
+  const { left, right, top, bottom } = labels.inside;
+  if (question.window) {
+    const at = [Math.max(left, Math.min(x(question.window.pressure_low), x(question.window.pressure_high))) + 6, Math.max(top, Math.min(y(question.window.temperature_low), y(question.window.temperature_high))) + 16];
+    labels.write("design window", [at, [at[0], at[1] + 18]], "design-text");
   }
-  for (const point of pointsOf(line)) {
-    const [px, py] = [x(point.pressure), y(point.temperature)];
-    if (px < LEFT || px > width - RIGHT || py < TOP || py > floor) continue;
-    picture.append(svg("circle", { class: "critical", cx: px, cy: py, r: 5 }));
-    const right = px > width - RIGHT - 150;
-    picture.append(
-      svg("text", { class: "dew-text halo", x: px + (right ? -9 : 9), y: py + 15, "text-anchor": right ? "end" : "start" }, point.name),
-    );
+  if (line?.pressure?.length) {
+    const points = line.pressure.map((value, n) => [x(value), y(line.temperature[n])]);
+    for (const point of pointsOf(line)) {
+      const [px, py] = [x(point.pressure), y(point.temperature)];
+      if (px < left || px > right || py < top || py > bottom) continue;
+      picture.append(svg("circle", { class: "critical", cx: px, cy: py, r: 5 }));
+      labels.write(point.name, [[px + 9, py + 17], [px - 9, py + 17, "end"], [px + 9, py - 9], [px - 9, py - 9, "end"]], "dew-text");
+    }
+    const shown = points.filter(([px, py]) => px > left && px < right && py > top && py < bottom);
+    const along = [0.35, 0.5, 0.2, 0.65, 0.8].map((share) => shown[Math.floor(shown.length * share)]).filter(Boolean);
+    if (!shown.length) labels.write("the dew line lies outside this view", [[left + 8, bottom - 8]], "quiet");
+    const below = along.map(([px, py]) => [px + 8, py + 22]);
+    if (!labels.write("dew line, wet below", below, "dew-text")) labels.write("dew line", below, "dew-text");
+    const shift = marginHeight(y, margin, units);
+    if (shown.length) labels.write(`warned within ${brief(margin, 3)} K`, along.map(([px, py]) => [px - 8, py - shift - 8, "end"]), "quiet");
   }
-  const shown = points.filter(([px, py]) => px > LEFT + 30 && px < width - RIGHT - 70 && py > TOP + 20 && py < floor - 24);
-  const middle = shown[Math.floor(shown.length / 3)];
-  if (middle) picture.append(svg("text", { class: "dew-text halo", x: middle[0] + 10, y: middle[1] + 20 }, "dew line, wet below"));
+  const validity = answer.model?.validity;
+  if (!validity) return;
+  const [coldest, warmest] = validity.temperature.map((value) => y(fromSi(value, units.temperature, ambient)));
+  const highest = x(fromSi(validity.pressure[1], units.pressure, ambient));
+  if (coldest < bottom && coldest > top) labels.write("published range begins", [[right - 6, coldest - 6, "end"], [left + 6, coldest - 6]], "range-text");
+  if (warmest < bottom && warmest > top) labels.write("published range ends", [[right - 6, warmest + 16, "end"], [left + 6, warmest + 16]], "range-text");
+  if (highest > left && highest < right) labels.write("published range ends", [[highest - 6, top + 16, "end"], [highest - 6, bottom - 8, "end"]], "range-text");
 }
 
 /** Return the named points of a boundary: every member, at any depth, that has a pressure and a temperature of its own. */
@@ -112,18 +127,17 @@ function pointsOf(members, name = "") {
   return Object.entries(members).flatMap(([inner, member]) => pointsOf(member, inner));
 }
 
-function state(picture, { answer, units, pressure, temperature }, x, y, width, height) {
+function state(picture, labels, { answer, units, pressure, temperature }, x, y, height) {
   const [px, py] = [x(pressure), y(temperature)];
-  picture.append(svg("line", { class: "level", x1: px, x2: px, y1: TOP, y2: height }));
+  const { top, bottom } = labels.inside;
+  for (const [from, to] of [[TOP, height - BOTTOM], [height - 12, height]]) picture.append(svg("line", { class: "level", x1: px, x2: px, y1: from, y2: to }));
   const { dew_point_temperature: dew, margin_temperature: margin } = answer.phase;
   if (dew !== null) {
-    const end = Math.max(TOP, Math.min(height - BOTTOM, y(dew)));
+    const end = Math.max(top, Math.min(bottom, y(dew)));
     picture.append(svg("line", { class: "plumb", x1: px, x2: px, y1: py, y2: end }));
+    const middle = (py + end) / 2 + 5;
     const words = `${brief(margin, 3)} ${differenceSign(units.temperature)}`;
-    const right = px > width - RIGHT - 90;
-    picture.append(
-      svg("text", { class: "plumb-text halo", x: px + (right ? -8 : 8), y: Math.max(TOP + 12, (py + end) / 2 + 4), "text-anchor": right ? "end" : "start" }, words),
-    );
+    labels.write(words, [[px + 12, middle], [px - 12, middle, "end"], [px + 12, py - 8], [px - 12, py - 8, "end"]], "plumb-text");
   }
   // a pointer whose tip stands on the state, as on a level gauge
   const mark = svg("path", { class: "state-mark", d: `M${px} ${py}l-9 -16h18z` });

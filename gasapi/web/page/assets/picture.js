@@ -8,6 +8,8 @@ import { brief, shown } from "./numbers.js";
 import { boundaryOf, commonOf, isothermsOf, othersOf, rangesFor } from "./scene.js";
 import { post } from "./service.js";
 
+const PRINTED = 560;
+
 /** Give the page its picture. `move` is called with the pressure and temperature to which the state was moved. */
 export function pictureIn(move) {
   const places = Object.fromEntries(["map", "curves", "agreement", "numbers", "reading"].map((id) => [id, document.getElementById(id)]));
@@ -116,11 +118,20 @@ export function pictureIn(move) {
     );
   }
 
+  function paper(width) {
+    if (!scene) return;
+    scene.width = width;
+    draw();
+  }
+
   function refresh() {
     if (scene) show(scene);
   }
 
   for (const control of document.querySelectorAll(".picture-tools input")) control.addEventListener("change", refresh);
+  // on paper the picture is as wide as the column, and its words keep their size
+  addEventListener("beforeprint", () => paper(PRINTED));
+  addEventListener("afterprint", () => paper(0));
   new ResizeObserver(() => requestAnimationFrame(draw)).observe(document.getElementById("picture"));
   return { show };
 }
