@@ -59,6 +59,8 @@ _BOUNDS: Final = {
     "mass_flow": (1e-30, 1e15),
     "amount_flow": (1e-30, 1e15),
     "throughput": (1e-30, 1e15),
+    "pressure": (0.0, 1e13),
+    "temperature": (0.0, 1e6),
 }
 
 
@@ -158,7 +160,15 @@ class Readings:
     def uncertainty(self, quantity: str, *path: str) -> float:
         """Return a standard uncertainty in SI, 0 where it is missing."""
         value = self.get(*path)
-        return 0.0 if value is None else self.units[quantity].difference_to_si(value)
+        if value is None:
+            return 0.0
+        found: float = self.units[quantity].difference_to_si(value)
+        most = _BOUNDS[quantity][1]
+        if not found <= most:
+            si = SI_UNITS[quantity].name
+            self.wrong.append((path, f"this is {found:.6g} {si}; a standard uncertainty is at most {most:g} {si}"))
+            return 0.0
+        return found
 
     def input_uncertainty(self) -> InputUncertainty | None:
         """Return the standard uncertainties of pressure (Pa) and temperature (K), None where none was given."""

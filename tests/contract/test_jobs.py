@@ -529,6 +529,8 @@ def test_numbers_stay_where_things_exist(refuse):
     assert "/volume" in refuse("pressure-decay", volume=1e-300)
     assert "/duration" in refuse("pressure-decay", duration=1e-300)
     assert "/density" in refuse("molar-mass", density=1e300)
+    assert "/input_uncertainty/density" in refuse("molar-mass", input_uncertainty={"density": 1e300})
+    assert "/input_uncertainty/pressure" in refuse("flow", input_uncertainty={"pressure": 1e300})
     assert "/leak_limit/value" in refuse("pressure-decay", leak_limit={"value": 1e-300, "unit": "kg/s"})
     assert "/meter/design_density" in refuse("flow", meter={"principle": "volumetric", "design_density": 1e-300})
 
