@@ -67,7 +67,7 @@ Columns2 = tuple[np.ndarray, np.ndarray]
 
 
 def cases(rows: int) -> dict[str, tuple[Any, Columns2]]:
-    """Return gas, temperatures and pressures by case; states that a plant sees, and carbon dioxide close to its critical point."""
+    """Return gas, temperatures and pressures by case: states of a plant, and carbon dioxide close to its critical point."""
     rng = np.random.default_rng(20)
     return {
         "nitrogen": ("nitrogen", (rng.uniform(250.0, 350.0, rows), rng.uniform(1e5, 2e7, rows))),
@@ -133,9 +133,9 @@ def question(gas: Any, columns: Columns2, accuracy: float | None = None) -> byte
 
 
 def coolprop(fluid: str, columns: Columns2) -> np.ndarray:
-    import CoolProp.CoolProp as CP
+    from CoolProp.CoolProp import PropsSI
 
-    return CP.PropsSI("Dmass", "T", columns[0], "P", columns[1], fluid)
+    return PropsSI("Dmass", "T", columns[0], "P", columns[1], fluid)
 
 
 def pyaga8_loop(columns: Columns2) -> list[float]:
@@ -219,9 +219,11 @@ def main() -> None:
                 check("CoolProp", ours, coolprop(fluid, some))
                 sides["CoolProp, whole arrays"] = (lambda f=fluid, c=some: coolprop(f, c), library_rows)
             else:
-                molar_mass = context.models(
-                    context.gas(GasSpec(None, tuple(NATURAL_GAS.items())))
-                ).prepared("gerg-2008").fluid.molar_mass
+                molar_mass = (
+                    context.models(context.gas(GasSpec(None, tuple(NATURAL_GAS.items()))))
+                    .prepared("gerg-2008")
+                    .fluid.molar_mass
+                )
                 check("pyaga8", ours, np.array(pyaga8_loop(some)) * 1000.0 * molar_mass)
                 sides["pyaga8, point by point"] = (lambda c=some: pyaga8_loop(c), library_rows)
                 few = (some[0][:2000], some[1][:2000])
