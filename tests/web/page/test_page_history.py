@@ -58,7 +58,13 @@ def test_dropped_file_with_broken_rows_is_finished(visit):
         assert 0x80000000 <= int(row[column["status_code"]])
     # the line of the file, header and empty line counted
     assert "line 3" in rows[1][column["reasons"]]
-    expect(here.page.locator("#history-counts")).to_contain_text("1 rows good, 1 uncertain, 2 bad, by reference")
+    expect(here.page.locator("#history-counts")).to_contain_text("Of 4 rows 1 good, 1 uncertain, 2 bad, by reference")
+    trend = here.page.locator("#trend")
+    trend.focus()
+    trend.press("End")
+    expect(here.page.locator("#trend-reading")).to_contain_text("Row 4: density")
+    trend.press("ArrowLeft")
+    expect(here.page.locator("#trend-reading")).to_have_text("Row 3: density no number, Z no number, bad.")
     expect(here.page.locator("#trend path.lane-bad")).to_have_count(1)
     here.keep("history-broken-row")
 

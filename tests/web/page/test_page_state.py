@@ -270,3 +270,21 @@ def test_two_phases_give_no_number_and_say_why(visit):
     expect(here.page.locator("#verdict")).to_contain_text("Bad")
     expect(here.page.locator("#reasons")).to_contain_text("side by side")
     expect(here.page.locator("#density")).to_have_text(NO_FIGURE)
+
+
+def test_service_that_is_gone_is_told(visit):
+    """Without the service the page says so and leaves no figure standing; with it back the next change is answered."""
+    here = visit()
+    here.context.set_offline(True)
+    here.page.fill("#pressure", "30")
+    here.settled()
+    expect(here.page.locator("#fault")).to_contain_text("cannot be reached")
+    expect(here.page.locator("#density")).to_have_text(NO_FIGURE)
+    here.context.set_offline(False)
+    here.page.fill("#pressure", "31")
+    here.settled()
+    expect(here.page.locator("#fault")).not_to_be_visible()
+    asked = here.state(gas="carbon dioxide", pressure=31, temperature=15, units=PLANT)
+    assert close_to(asked["result"]["density"]) == read(here.page)
+    assert all("ERR_INTERNET_DISCONNECTED" in words for words in here.errors)
+    here.errors = []

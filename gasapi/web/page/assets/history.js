@@ -6,7 +6,7 @@ import { html } from "./elements.js";
 import { parsed } from "./numbers.js";
 import { commonOf } from "./scene.js";
 import { post, send, wordsOf } from "./service.js";
-import { drawTrend, Trend } from "./trend.js";
+import { drawTrend, readableTrend, Trend } from "./trend.js";
 import { reasonWords } from "./words.js";
 
 const BLOCK = 5000;
@@ -134,7 +134,8 @@ export function historyIn(current) {
       const [head, ...given] = text.split(/\r?\n/).filter((line) => line !== "");
       // the service counts the lines of the block that it was sent; the reader of the file counts those of the file
       const answered = given.map((line, n) => line.replace(/\bline \d+("?)$/, `line ${lines[n]}$1`));
-      parts.push(first ? `${head}\r\n` : "", `${answered.join("\r\n")}\r\n`);
+      // as a blob the block need not stay in memory
+      parts.push(new Blob([first ? `${head}\r\n` : "", answered.join("\r\n"), "\r\n"]));
       first = false;
       take(fieldsOf(head, ","), answered, told);
       done += records.length;
@@ -166,11 +167,12 @@ export function historyIn(current) {
     link.download = file.name.replace(/(\.[^.]*)?$/, "-answered.csv");
     link.hidden = false;
     const { good, uncertain, bad } = trend.counts;
-    const words = `${good.toLocaleString("en")} rows good, ${uncertain.toLocaleString("en")} uncertain, ${bad.toLocaleString("en")} bad${model ? `, by ${model}` : ""}.`;
-    const why = [...told].sort((a, b) => b[1] - a[1]).map(([word, count]) => html("li", {}, `${count.toLocaleString("en")} rows: ${reasonWords(word)}`));
+    const words = `Of ${trend.rows.toLocaleString("en")} rows ${good.toLocaleString("en")} good, ${uncertain.toLocaleString("en")} uncertain, ${bad.toLocaleString("en")} bad${model ? `, by ${model}` : ""}.`;
+    const why = [...told].sort((a, b) => b[1] - a[1]).map(([word, count]) => html("li", {}, `${count.toLocaleString("en")} ${count === 1 ? "row" : "rows"}: ${reasonWords(word)}`));
     at("history-reasons").replaceChildren(html("p", { id: "history-counts" }, html("strong", {}, words)), html("ul", {}, why));
   }
 
+  readableTrend(at("trend"), () => ({ trend, sign: current()?.units.density.sign }), (words) => (at("trend-reading").textContent = words));
   at("history-file").addEventListener("change", (event) => event.target.files[0] && open(event.target.files[0]));
   const drop = at("drop");
   drop.addEventListener("dragover", (event) => {

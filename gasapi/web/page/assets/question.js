@@ -86,6 +86,6 @@ export function restore(form, search, blend) {
     if (field.tagName === "SELECT" && field.selectedIndex < 0) field.selectedIndex = 0;
   }
   if (parts.length) blend(parts);
-  if ([...given.keys()].some((name) => WINDOW.includes(name) || ["model", "ambient_pressure"].includes(name)))
-    document.getElementById("more").open = true;
+  const more = document.getElementById("more");
+  if ([...given.keys()].some((name) => more.querySelector(`[name="${CSS.escape(name)}"]`))) more.open = true;
 }

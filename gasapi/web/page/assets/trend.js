@@ -2,7 +2,7 @@
 
 import { linear, ticks } from "./axes.js";
 import { path, svg } from "./elements.js";
-import { brief } from "./numbers.js";
+import { brief, shown } from "./numbers.js";
 
 const LEVELS = ["good", "uncertain", "bad"];
 const LEFT = 76;
@@ -39,7 +39,7 @@ export class Trend {
 export function drawTrend(place, trend, densitySign) {
   const width = Math.max(260, place.clientWidth);
   const height = place.clientHeight || 360;
-  const x = linear([0, Math.max(1, trend.rows - 1)], [LEFT, width - RIGHT]);
+  const x = linear([-0.5, trend.rows - 0.5], [LEFT, width - RIGHT]);
   const lanes = height - 3 * LANE - 26;
   const middle = lanes * 0.6;
   const columns = columnsOf(trend, Math.floor(width - LEFT - RIGHT));
@@ -51,7 +51,7 @@ export function drawTrend(place, trend, densitySign) {
     picture.append(svg("text", { class: "quiet", x: LEFT - 7, y: y + 11, "text-anchor": "end" }, level));
     picture.append(svg("line", { class: "grid", x1: LEFT, x2: width - RIGHT, y1: y + LANE - 2, y2: y + LANE - 2 }));
     let d = "";
-    for (const column of columns) if (column.levels[n]) d += `M${column.x.toFixed(1)} ${y}h${Math.max(1.5, column.width).toFixed(1)}v${LANE - 4}h-${Math.max(1.5, column.width).toFixed(1)}z`;
+    for (const column of columns) if (column.levels[n]) d += `M${column.left.toFixed(1)} ${y}h${Math.max(1.5, column.width).toFixed(1)}v${LANE - 4}h-${Math.max(1.5, column.width).toFixed(1)}z`;
     picture.append(svg("path", { class: `lane-${level}`, d }));
   });
   for (const [row, time] of trend.times) {
@@ -75,17 +75,65 @@ function trace(picture, columns, name, x, range, width, words) {
     picture.append(svg("line", { class: "grid", x1: LEFT, x2: width - RIGHT, y1: y(value), y2: y(value) }));
     picture.append(svg("text", { class: "quiet", x: LEFT - 7, y: y(value) + 4, "text-anchor": "end" }, brief(value, 5)));
   }
-  const points = columns.flatMap((column) => {
-    const { low: from, high: to } = column[name];
-    if (from > to) return [null];
-    return from === to ? [[column.x, y(from)]] : [[column.x, y(from)], [column.x, y(to)]];
-  });
-  picture.append(svg("path", { class: "trace", d: path(points) }));
-  // a row with a number between rows without one is a line of no length: a dot lets it be seen
-  points.forEach((point, n) => {
-    if (point && !points[n - 1] && !points[n + 1]) picture.append(svg("circle", { cx: point[0], cy: point[1], r: 2, fill: "currentColor" }));
-  });
+  for (const [level, points] of pointsByLevel(columns, name, y)) {
+    picture.append(svg("path", { class: `trace trace-${level}`, d: path(points) }));
+    // a row with a number between rows without one would be a line of no length: a dot lets it be seen
+    points.forEach((point, n) => {
+      if (point && !points[n - 1] && !points[n + 1]) picture.append(svg("circle", { class: `lane-${level}`, cx: point[0], cy: point[1], r: 3 }));
+    });
+  }
   picture.append(svg("text", { class: "halo", x: LEFT + 6, y: range[1] + 12, "font-weight": 600 }, words));
+}
+
+/** Return the points of each level: those of uncertain rows are joined to their neighbours, so that no gap hides a step. */
+function pointsByLevel(columns, name, y) {
+  const found = new Map(LEVELS.slice(0, 2).map((level) => [level, []]));
+  let before = null;
+  for (const column of columns) {
+    const { low, high } = column[name];
+    const level = low > high ? null : column.levels[1] ? "uncertain" : "good";
+    const points = level === null ? [] : low === high ? [[column.x, y(low)]] : [[column.x, y(low)], [column.x, y(high)]];
+    for (const [one, line] of found) {
+      if (one !== level) line.push(null);
+      else if (before && before.level !== level) line.push(before.last, ...points);
+      else line.push(...points);
+    }
+    before = level === null ? null : { level, last: points.at(-1) };
+  }
+  return found;
+}
+
+/** Let rows be read by pointer and by keyboard; `say` takes the words. */
+export function readableTrend(place, current, say) {
+  let row = 0;
+
+  function read(wanted) {
+    const { trend, sign } = current();
+    row = Math.max(0, Math.min(trend.length - 1, wanted));
+    const value = (number, unit) => (Number.isNaN(number) ? "no number" : `${shown(number, 5)}${unit}`);
+    const words = `Row ${row + 1}: density ${value(trend.density[row], ` ${sign}`)}, Z ${value(trend.factor[row], "")}, ${LEVELS[trend.level[row]]}.`;
+    place.setAttribute("aria-valuemin", 1);
+    place.setAttribute("aria-valuemax", trend.length);
+    place.setAttribute("aria-valuenow", row + 1);
+    place.setAttribute("aria-valuetext", words);
+    say(words);
+  }
+
+  place.addEventListener("pointermove", (event) => {
+    const { trend } = current();
+    if (!trend?.length) return;
+    const box = place.getBoundingClientRect();
+    read(Math.floor(((event.clientX - box.left - LEFT) / (box.width - LEFT - RIGHT)) * trend.rows));
+  });
+  place.addEventListener("keydown", (event) => {
+    const { trend } = current();
+    if (!trend?.length) return;
+    const page = Math.max(1, Math.round(trend.rows / 20));
+    const to = { ArrowLeft: row - 1, ArrowDown: row - 1, ArrowRight: row + 1, ArrowUp: row + 1, PageUp: row + page, PageDown: row - page, Home: 0, End: trend.length }[event.key];
+    if (to === undefined) return;
+    event.preventDefault();
+    read(to);
+  });
 }
 
 /** Return for every column of pixels the lowest and highest values of its rows, and the levels among them. */
@@ -96,7 +144,7 @@ function columnsOf(trend, width) {
     const from = Math.floor((n * trend.rows) / count);
     const to = Math.min(trend.length, Math.floor(((n + 1) * trend.rows) / count));
     if (from >= to) break;
-    const column = { x: LEFT + (n * width) / count, width: width / count, levels: [false, false, false], density: bounds(trend.density, from, to), factor: bounds(trend.factor, from, to) };
+    const column = { x: LEFT + ((n + 0.5) * width) / count, left: LEFT + (n * width) / count, width: width / count, levels: [false, false, false], density: bounds(trend.density, from, to), factor: bounds(trend.factor, from, to) };
     for (let row = from; row < to; row += 1) column.levels[trend.level[row]] = true;
     columns.push(column);
   }
