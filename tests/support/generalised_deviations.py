@@ -148,7 +148,8 @@ def random_mixtures(n: int, seed: int) -> list[Mixture]:
             continue
         chosen = [first, *(others[i] for i in rng.choice(len(others), size=count, replace=False))]
         weights = rng.dirichlet(np.full(len(chosen), 1.0))
-        weights = np.array([min(w, 0.1) if s.id == "water" else w for s, w in zip(chosen, weights, strict=True)])
+        dry = sum(float(w) for s, w in zip(chosen, weights, strict=True) if s.id != "water")
+        weights = np.array([min(w, dry / 9.0) if s.id == "water" else w for s, w in zip(chosen, weights, strict=True)])
         mixtures.append(mixture(chosen, [float(w) for w in weights / weights.sum()]))
     return mixtures
 
