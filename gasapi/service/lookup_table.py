@@ -238,6 +238,7 @@ def answer_lookup_table(
         return LookupTableAnswer(solve_state(context, question.state), None)
     margin = context.dew_point_margin if question.state.dew_point_margin is None else question.state.dew_point_margin
     sampler = _Sampler(models.prepared(choice.model), question, margin, pause)
+    _check_limits(sampler)
     surface = _survey(sampler)
     table = _table(sampler, surface)
     because = (
@@ -251,6 +252,16 @@ def _check_width(quantity: str, ends: tuple[float, float]) -> None:
     size = max(abs(low), abs(high))
     if not (high - low >= _NARROWEST * size and size <= _LARGEST):
         raise RangeTooNarrow(quantity, low, high)
+
+
+def _check_limits(sampler: _Sampler) -> None:
+    """Refuse a range with a corner beyond the limits of the equation, before any phase is looked for out there."""
+    q, limits = sampler.question, sampler.model.extended
+    for pressure in q.pressure:
+        for temperature in q.temperature:
+            p, t = sampler.si(np.array([pressure]), np.array([temperature]))
+            if not (limits.temperature_min <= t[0] <= limits.temperature_max and p[0] <= limits.pressure_max):
+                raise sampler.refusal(int(Reason.OUTSIDE_LIMITS), _UNKNOWN, pressure, temperature)
 
 
 def _mesh(x: Array, y: Array) -> tuple[Array, Array]:
