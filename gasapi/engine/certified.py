@@ -169,20 +169,27 @@ class CertifiedFluid(Fluid):
         tau = self._reducing_temperature / temperature
         reduced = pressure / self._reducing_pressure
         keys = self._keys(tau, reduced)
-        density = np.empty(tau.size)
-        status = np.zeros(tau.size, dtype=np.int8)
-        present = np.flatnonzero(np.bincount(keys + 1, minlength=1)).tolist()
+        # patch by patch in order, so that rows are gathered once and each patch is a slice
+        order = np.argsort(keys, kind="stable")
+        counts = np.bincount(keys + 1, minlength=1)
+        ends = np.cumsum(counts).tolist()
+        present = np.flatnonzero(counts).tolist()
         self._build([key - 1 for key in present if key > 0])
+        x, y = tau.take(order), reduced.take(order)
+        factor = np.ones(tau.size)
         exact: list[NDArray[np.intp]] = []
         for key in present:
-            rows = np.flatnonzero(keys == key - 1)
+            part = slice(ends[key] - int(counts[key]), ends[key])
             if key == 0 or not self._patch(key - 1).usable:
-                exact.append(rows)
-                continue
-            z = _evaluate_block(self._patch(key - 1), tau.take(rows), reduced.take(rows))
-            z *= self.gas_constant
-            z *= temperature.take(rows)
-            density[rows] = pressure.take(rows) / z
+                exact.append(order[part])
+            else:
+                factor[part] = _evaluate_block(self._patch(key - 1), x[part], y[part])
+        z = np.empty(tau.size)
+        z[order] = factor
+        z *= self.gas_constant
+        z *= temperature
+        density = pressure / z
+        status = np.zeros(tau.size, dtype=np.int8)
         if exact:
             rows = np.sort(np.concatenate(exact))
             root = self.exact.density(temperature.take(rows), pressure.take(rows), Branch.GAS)

@@ -53,6 +53,8 @@ __all__ = [
 
 # rows by which a generalised equation is chosen: every so many of a longer series
 _SURVEYED_ROWS: Final = 1 << 20
+# rows that are answered from a table at a time: they fall into a dozen patches, each of which is a block of its own
+_TABLE_ROWS: Final = 10 * BLOCK_ROWS
 # compositions in one block of rows from which on a second process pays
 _SHARED_FROM: Final = 100
 
@@ -278,7 +280,8 @@ class Series:
         """Return the answers to rows."""
         n = columns.temperature.size
         if self._choice.model is None or columns.fractions is None:
-            parts = [self._block(columns.rows(i, i + BLOCK_ROWS)) for i in range(0, n, BLOCK_ROWS)] or [self._block(columns)]
+            size = BLOCK_ROWS if self._question.accuracy is None else _TABLE_ROWS
+            parts = [self._block(columns.rows(i, i + size)) for i in range(0, n, size)] or [self._block(columns)]
             return parts[0] if len(parts) == 1 else _joined(parts)
         return self._by_composition(columns)
 

@@ -2,8 +2,9 @@
 
     python tests/bench/series_throughput.py [--rows 100000] [--rounds 5]
 
-Ours: ``POST /v1/series`` in JSON on loopback, from the first byte sent to the last one received, and the same rows through
-the service in process; nitrogen, carbon dioxide (outside and near its critical region) and a natural gas of 11 components.
+Ours: ``POST /v1/series`` in JSON on loopback, from the first byte sent to the last one received; the same rows through the
+service in process, phase and quality included; densities alone, and alone from a certified table that is built anew each
+time. Nitrogen, carbon dioxide (outside and near its critical region) and a natural gas of 11 components.
 Libraries: CoolProp's call for whole arrays (its reference equations of the pure gases), and GERG-2008 point by point by
 pyaga8 and teqp (the natural gas). The sides take turns, and medians are printed with the ratio to the library: for the
 natural gas, the faster one. Every side computes the same densities, which is checked first.
@@ -28,6 +29,9 @@ from typing import Any
 import numpy as np
 import orjson
 
+from gasapi.engine.certified import CertifiedFluid
+from gasapi.engine.models.helmholtz_fluid import HelmholtzFluid
+from gasapi.engine.protocol import Branch
 from gasapi.gases.catalogue import Catalogue
 from gasapi.service.context import Context
 from gasapi.service.questions import GasSpec
@@ -125,6 +129,15 @@ class Server:
         self.process.wait(30)
 
 
+def model_of(context: Context, gas: Any) -> HelmholtzFluid:
+    """Return the equation that the service chooses for a gas."""
+    mixture = not isinstance(gas, str)
+    spec = GasSpec(None, tuple(gas["fractions"].items())) if mixture else GasSpec(gas)
+    fluid = context.models(context.gas(spec)).prepared("gerg-2008" if mixture else "reference").fluid
+    assert isinstance(fluid, HelmholtzFluid)
+    return fluid
+
+
 def question(gas: Any, columns: Columns2, accuracy: float | None = None) -> bytes:
     members = {"gas": gas, "temperature": columns[0], "pressure": columns[1]}
     if accuracy is not None:
@@ -208,22 +221,24 @@ def main() -> None:
             print(name)
             ours = in_process(context, gas, some)
             body, table = question(gas, columns), question(gas, columns, 1e-6)
+            fluid = model_of(context, gas)
             sides: dict[str, tuple[Callable[[], Any], int]] = {
+                "ours, density alone": (lambda f=fluid, c=columns: f.density(*c, Branch.GAS), options.rows),
+                "ours, table and density alone": (
+                    lambda f=fluid, c=columns: CertifiedFluid(f, 1e-6).density(*c, Branch.GAS),
+                    options.rows,
+                ),
                 "ours, HTTP and JSON": (lambda b=body: server.ask("POST", "/v1/series", b), options.rows),
                 "ours, in process": (lambda g=gas, c=columns: in_process(context, g, c), options.rows),
                 "ours, certified table, HTTP": (lambda b=table: server.ask("POST", "/v1/series", b), options.rows),
                 "ours, certified table": (lambda g=gas, c=columns: in_process(context, g, c, 1e-6), options.rows),
             }
             if isinstance(gas, str):
-                fluid = {"nitrogen": "Nitrogen", "carbon-dioxide": "CarbonDioxide"}[gas]
-                check("CoolProp", ours, coolprop(fluid, some))
-                sides["CoolProp, whole arrays"] = (lambda f=fluid, c=some: coolprop(f, c), library_rows)
+                name = {"nitrogen": "Nitrogen", "carbon-dioxide": "CarbonDioxide"}[gas]
+                check("CoolProp", ours, coolprop(name, some))
+                sides["CoolProp, whole arrays"] = (lambda f=name, c=some: coolprop(f, c), library_rows)
             else:
-                molar_mass = (
-                    context.models(context.gas(GasSpec(None, tuple(NATURAL_GAS.items()))))
-                    .prepared("gerg-2008")
-                    .fluid.molar_mass
-                )
+                molar_mass = fluid.molar_mass
                 check("pyaga8", ours, np.array(pyaga8_loop(some)) * 1000.0 * molar_mass)
                 sides["pyaga8, point by point"] = (lambda c=some: pyaga8_loop(c), library_rows)
                 few = (some[0][:2000], some[1][:2000])
