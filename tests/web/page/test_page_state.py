@@ -197,6 +197,14 @@ def test_link_opens_the_same_answer(visit):
     assert close_to(answer["result"]["density"]) == read(there.page)
 
 
+def test_numbers_without_units_mean_what_they_mean_to_the_interface(visit):
+    """The query of a GET works behind the page's own address, its defaults (Pa and K) included."""
+    here = visit("?gas=nitrogen&pressure=4101325&temperature=298.15")
+    asked = here.context.request.get(f"{here.origin}v1/state?gas=nitrogen&pressure=4101325&temperature=298.15").json()
+    assert close_to(asked["result"]["density"]) == read(here.page)
+    assert "nitrogen, 4101325 Pa, 298.15 K: gasapi" == here.page.title()
+
+
 def test_curl_and_python_hold_the_question(visit):
     """What is handed over as curl and as Python holds the very body that the page asked with."""
     here = visit(

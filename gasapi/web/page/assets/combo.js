@@ -24,8 +24,9 @@ export function gases() {
   return catalogue;
 }
 
-/** Return whether a text is the whole name of a gas, as far as the names are here already. */
-export function isName(text) {
+/** Return whether a text is the whole name of a gas; true where the names cannot be had, so that the service is asked. */
+export async function isName(text) {
+  await gases().catch(() => {});
   return !known || known.has(text.trim().toLowerCase());
 }
 

@@ -32,13 +32,12 @@ leavesIn((leaf) => {
 });
 
 form.addEventListener("input", ({ target }) => {
-  if (target.closest(".combo") && !isName(target.value)) {
-    // half a name is no question yet: it is asked when it is a gas, or when the field is left
-    asking?.abort();
-    clearAnswer("No answer yet: the name of the gas is being written");
-  } else if (!target.closest(".part") || target.name || isName(target.value)) ask();
+  if (target.closest(".combo")) askOnceNamed(target);
+  else if (!target.closest(".part") || target.name) ask();
 });
-form.addEventListener("change", ({ target }) => target.closest(".combo") && !isName(target.value) && ask());
+form.addEventListener("change", async ({ target }) => {
+  if (target.closest(".combo") && !(await isName(target.value))) ask();
+});
 form.addEventListener("submit", (event) => {
   event.preventDefault();
   ask();
@@ -48,6 +47,16 @@ for (const select of document.querySelectorAll("select[data-quantity]")) lastUni
 ask();
 // the names are fetched when somebody is about to look for one
 form.addEventListener("focusin", () => gases().catch(() => {}), { once: true });
+
+/** Half a name is no question yet: it is asked when it is that of a gas, or when the field is left. */
+async function askOnceNamed(field) {
+  const written = field.value;
+  asking?.abort();
+  const whole = await isName(written);
+  if (field.value !== written) return;
+  if (whole) ask();
+  else clearAnswer("No answer yet: the name of the gas is being written");
+}
 
 /** Ask what the form says and draw the answer. */
 async function ask() {
@@ -71,6 +80,7 @@ async function ask() {
     drawAnswer(answer, units, ambient);
     performance.measure("answer drawn", { start: started });
     current = { question, answer, units, ambient };
+    document.title = titleOf(question, answer, units);
     document.documentElement.dataset.drawn = question.page;
     if (!document.getElementById("stands").hidden) picture.show(current);
     jobs.changed();
@@ -108,6 +118,11 @@ function chosenUnits() {
 /** Return the ambient pressure that the service used, in Pa: a site may have one of its own. */
 function ambientOf(question, answer, unit) {
   return unit.gauge ? answer.state.pressure - question.body.pressure * unit.scale : (question.body.ambient_pressure ?? 101325);
+}
+
+/** Name the tab after the state, since several stand open on a control desk. */
+function titleOf({ body }, { gas }, { pressure, temperature }) {
+  return `${gas.id || "mixture"}, ${body.pressure} ${pressure.sign}, ${body.temperature} ${temperature.sign}: gasapi`;
 }
 
 /** Move the state, as if pressure and temperature had been typed. */

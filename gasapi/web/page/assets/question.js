@@ -11,6 +11,10 @@ const NUMBERS = [
   "input_uncertainty.temperature",
 ];
 const WINDOW = ["window.pressure_low", "window.pressure_high", "window.temperature_low", "window.temperature_high"];
+const SI = [
+  ["pressure", "Pa"],
+  ["temperature", "K"],
+];
 const DEFAULTS = { model: "auto", basis: "mole", fraction_unit: "1", density_unit: "kg/m3" };
 
 /** What the page itself cannot read as a question; `name` is the field. */
@@ -73,6 +77,8 @@ function whole(window) {
 /** Fill the form from the address bar; mixtures are handed to `blend`. */
 export function restore(form, search, blend) {
   const given = new URLSearchParams(search);
+  // an address that gives a number without its unit means what it means to the interface
+  for (const [name, unit] of SI) if (given.has(name) && !given.has(`${name}_unit`)) given.set(`${name}_unit`, unit);
   const parts = [];
   for (const [name, value] of given) {
     if (name.startsWith("fraction.")) {
