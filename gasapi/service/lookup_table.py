@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from dataclasses import replace
 from typing import Final, Literal, NamedTuple
 
 import numpy as np
@@ -22,7 +23,9 @@ from gasapi.service.bilinear import Float32, Grid, interpolate
 from gasapi.service.context import Context
 from gasapi.service.evaluation import Block, evaluate_block, evaluate_float
 from gasapi.service.interpolation_grid import MOST_VALUES, Axes, GridTooLarge, Surface, grids, no_pause, within
-from gasapi.service.prepared import PreparedModel
+from gasapi.service.mixture_phase import MixtureJudge
+from gasapi.service.phase import NoVerdict
+from gasapi.service.prepared import PhaseJudge, PreparedModel
 from gasapi.service.quality import BAD, Reason, quality_of
 from gasapi.service.questions import StateQuestion
 from gasapi.service.selection import AUTO, choose_for_rows
@@ -44,6 +47,8 @@ Property = Literal["density", "compressibility_factor", "molar_volume"]
 
 _SURVEY: Final = 65
 _EDGE: Final = 513
+_SURVEY_SINGLY: Final = 9
+_EDGE_SINGLY: Final = 17
 _HALVINGS: Final = 60
 _JUMP: Final = 1e-3
 _NARROWEST: Final = 1e-4
@@ -123,18 +128,37 @@ class LookupTableAnswer(NamedTuple):
     table: LookupTable | None
 
 
+class _KnownPhase(NoVerdict):
+    """The phase of a range that was surveyed already, and is one that is no liquid: it is not looked for again.
+
+    A phase may cost a hundred times what a density does, for a mixture whose boundary is not known.
+    """
+
+    def __init__(self, judge: PhaseJudge) -> None:
+        self.compares_roots = judge.compares_roots
+        self.near_critical_block = judge.near_critical_block  # type: ignore[method-assign]
+
+    def survey_block(self, temperature: Array, pressure: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
+        """Return gas for each row; nearness to the dew point was seen by the survey."""
+        return np.zeros(temperature.size, dtype=np.int8), np.zeros(temperature.size, dtype=bool)
+
+
 class _Sampler:
     """A property of one gas by one equation, in the caller's units."""
 
     def __init__(
         self, model: PreparedModel, question: LookupTableQuestion, margin: float, pause: Callable[[], None] = no_pause
     ) -> None:
-        self.model = model
+        self.model = self.solved = model
         self.pause = pause
         self.question = question
         self.margin = margin
         self.flags = 0
         self.uncertainty = 0.0
+
+    def trust(self) -> None:
+        """Take it from here on that the whole range is one phase, and no liquid."""
+        self.solved = replace(self.model, phase=_KnownPhase(self.model.phase))
 
     def si(self, pressure: Array, temperature: Array) -> tuple[Array, Array]:
         """Return points in Pa and K."""
@@ -165,7 +189,7 @@ class _Sampler:
         for start in range(0, pressure.size, _PIECE):
             self.pause()
             rows = slice(start, start + _PIECE)
-            pieces.append(evaluate_block(self.model, temperature[rows], pressure[rows], self.margin))
+            pieces.append(evaluate_block(self.solved, temperature[rows], pressure[rows], self.margin))
         return pieces[0] if len(pieces) == 1 else Block(*(np.concatenate(columns) for columns in zip(*pieces, strict=True)))
 
     def refusal(self, flags: int, region: int, pressure: float, temperature: float) -> RangeNotOnePhase:
@@ -272,24 +296,45 @@ def _mesh(x: Array, y: Array) -> tuple[Array, Array]:
 def _survey(sampler: _Sampler) -> Surface:
     """Return a smooth stand-in of the property; refuse a range with more than one phase."""
     q = sampler.question
-    x = q.pressure[0] + (q.pressure[1] - q.pressure[0]) * np.linspace(0.0, 1.0, _SURVEY) ** 2
-    x[-1] = q.pressure[1]
-    y = np.linspace(*q.temperature, _SURVEY)
+    tested_singly = _tested_singly(sampler.model.phase)
+    x, y = _samples(q, _SURVEY_SINGLY if tested_singly else _SURVEY)
     p, t = _mesh(x, y)
-    block = sampler.states(p, t)
-    _check_boundary(sampler, x, y, block.region.reshape(x.size, y.size))
-    for edge_p, edge_t in _edges(q):
+    region = sampler.states(p, t).region.reshape(x.size, y.size)
+    _check_boundary(sampler, x, y, region)
+    for edge_p, edge_t in _edges(q, _EDGE_SINGLY if tested_singly else _EDGE):
         sampler.states(edge_p, edge_t)
-    _check_cold_edge(sampler)
-    smooth = sampler.property_of(p, t, block.density).reshape(x.size, y.size) * sampler.scale(x[:, None], y[None, :])
+    if not tested_singly:
+        _check_cold_edge(sampler)
+    if not (region == _LIQUID).any():
+        sampler.trust()
+    x, y = _samples(q, _SURVEY)
+    p, t = _mesh(x, y)
+    smooth = sampler.property_of(p, t, sampler.states(p, t).density).reshape(x.size, y.size) * sampler.scale(
+        x[:, None], y[None, :]
+    )
     return Surface(x, y, smooth, sampler.scale)
 
 
-def _edges(q: LookupTableQuestion) -> tuple[tuple[Array, Array], ...]:
+def _tested_singly(judge: PhaseJudge) -> bool:
+    """Return whether every state of a mixture takes a stability test of its own, since no boundary could be traced.
+
+    Then a sparser survey has to do: the phase does not hang on a line that a dense one could miss.
+    """
+    return isinstance(judge, MixtureJudge) and judge.phase.boundary is None
+
+
+def _samples(q: LookupTableQuestion, count: int) -> tuple[Array, Array]:
+    """Return pressures, denser at the low end, and temperatures of a survey."""
+    x = q.pressure[0] + (q.pressure[1] - q.pressure[0]) * np.linspace(0.0, 1.0, count) ** 2
+    x[-1] = q.pressure[1]
+    return x, np.linspace(*q.temperature, count)
+
+
+def _edges(q: LookupTableQuestion, count: int) -> tuple[tuple[Array, Array], ...]:
     """Return the four edges of the range, densely: a dome may cut one between its corners."""
-    p, t = np.linspace(*q.pressure, _EDGE), np.linspace(*q.temperature, _EDGE)
+    p, t = np.linspace(*q.pressure, count), np.linspace(*q.temperature, count)
     return tuple(
-        [(p, np.full(_EDGE, end)) for end in q.temperature] + [(np.full(_EDGE, end), t) for end in q.pressure],
+        [(p, np.full(count, end)) for end in q.temperature] + [(np.full(count, end), t) for end in q.pressure],
     )
 
 
