@@ -9,7 +9,7 @@ from typing import Final, NamedTuple
 from gasapi.engine.phase.boundary import NamedPoint
 from gasapi.engine.phase.pseudo_pure import PseudoPureVerdict
 from gasapi.engine.phase.pure import PureVerdict
-from gasapi.service.answers import GasAnswer, ModelAnswer, PhaseAnswer, StateAnswer
+from gasapi.service.answers import GasAnswer, ModelAnswer, PhaseAnswer, PhaseWarning, StateAnswer
 from gasapi.service.context import Context
 from gasapi.service.mixture_phase import MixtureJudge
 from gasapi.service.phase import PureJudge
@@ -66,7 +66,11 @@ def answer_phase_boundary(context: Context, question: StateQuestion) -> PhaseBou
     model = models.prepared(choice.model)
     boundary = _boundary(model)
     flags = model.flags
-    if boundary is None:
+    warnings: tuple[PhaseWarning, ...] = ()
+    if boundary is None and isinstance(model.phase, MixtureJudge):
+        flags |= int(Reason.OUTSIDE_LIMITS)
+        warnings = (PhaseWarning("boundary_not_traced", f"No boundary could be traced: {model.phase.phase.end}."),)
+    elif boundary is None:
         flags |= int(Reason.NO_MODEL)
     elif not any(name == "critical" for name, _ in boundary.points):
         # a line that goes on and on, as those of hydrogen and helium do
@@ -89,7 +93,7 @@ def answer_phase_boundary(context: Context, question: StateQuestion) -> PhaseBou
             density_pressure=None,
             density_temperature=None,
             density_expanded_uncertainty=None,
-            phase=PhaseAnswer("unknown" if boundary is None else "two-phase", None, None, None, model.phase.model, ()),
+            phase=PhaseAnswer("unknown" if boundary is None else "two-phase", None, None, None, model.phase.model, warnings),
             model=ModelAnswer(
                 model.id,
                 model.name,

@@ -99,6 +99,14 @@ def test_an_open_boundary_is_uncertain(context):
     assert ("uncertain", False) == (answer.state.quality.level, answer.boundary.complete)
 
 
+def test_a_boundary_below_the_range_of_the_equation_is_told_and_not_drawn(context):
+    """Lean biomethane: null, bad, and why."""
+    answer = boundary_of(context, "biomethane")
+    assert None is answer.boundary
+    assert ("bad", ("outside_limits",)) == (answer.state.quality.level, answer.state.quality.reasons)
+    assert ["boundary_not_traced"] == [warning.code for warning in answer.state.phase.warnings]
+
+
 def test_no_line_without_an_equation_that_has_one(context):
     """An equation that cannot serve the gas is refused by name."""
     with pytest.raises(ModelCannotServe):
