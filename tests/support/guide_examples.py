@@ -16,6 +16,7 @@ from gasapi.guide import PAGES, Guide, examples_of
 FOLDER = Path(__file__).resolve().parents[2] / "gasapi" / "guide" / "pages"
 _ANSWER = re.compile(r'(<pre class="answer">\n).*?(\n</pre>)', re.DOTALL)
 _CANDIDATE = ("id", "molar_mass", "density", "relative_difference", "toxic")
+_COMPARED = ("id", "density", "compressibility_factor", "relative_difference")
 _LINE = 96
 
 
@@ -24,6 +25,8 @@ def shown(answer: dict[str, Any]) -> dict[str, Any]:
     result = dict(answer["result"])
     if result.get("candidates"):
         result["candidates"] = [{name: c[name] for name in _CANDIDATE} for c in result["candidates"]]
+    if "models" in result:
+        result["models"] = [{name: m[name] for name in _COMPARED} for m in result["models"]]
     if "points" in result:
         result = {"points": result["points"], "complete": result["complete"]}
     return {"result": result, "quality": {"level": answer["quality"]["level"]}}
