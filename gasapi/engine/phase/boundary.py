@@ -14,6 +14,7 @@ import numpy as np
 
 from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.incipient import IncipientPhase, Points
+from gasapi.engine.phase.spline import hermite, hermite_slope
 from gasapi.engine.protocol import Branch, Status
 
 __all__ = ["HIGHEST", "Boundary", "NamedPoint", "position_of", "trace_boundary", "wilson_start"]
@@ -192,7 +193,7 @@ class _Trace:
         if len(self.position) < 2:
             return self.unknown[-1] + (position - self.position[-1]) * self.slope[-1]
         last = slice(-1, -3, -1) if self.position[-2] > self.position[-1] else slice(-2, None)
-        return _hermite(
+        return hermite(
             np.array([position]),
             np.array(self.position[last]),
             np.stack(self.unknown[last]),
@@ -213,27 +214,6 @@ def feed_log_density(position: Floats, scale: float) -> Floats:
         grown = _WEIGHT * np.exp(s) / scale
         s = s - (s + grown - position) / (1.0 + grown)
     return s
-
-
-def _hermite(at: Floats, x: Floats, y: Floats, slope: Floats) -> Floats:
-    """Return the piecewise cubic through values (m, j) and slopes (m, j) at knots x (m,), at points (r,)."""
-    cell = np.clip(np.searchsorted(x, at, side="right") - 1, 0, x.size - 2)
-    h = (x[cell + 1] - x[cell])[:, None]
-    t = (at - x[cell])[:, None]
-    chord = (y[cell + 1] - y[cell]) / h
-    c = (3.0 * chord - 2.0 * slope[cell] - slope[cell + 1]) / h
-    d = (slope[cell] + slope[cell + 1] - 2.0 * chord) / (h * h)
-    return y[cell] + t * (slope[cell] + t * (c + t * d))
-
-
-def _hermite_slope(at: Floats, x: Floats, y: Floats, slope: Floats) -> Floats:
-    """Return the slopes of the piecewise cubic of ``_hermite``."""
-    cell = np.clip(np.searchsorted(x, at, side="right") - 1, 0, x.size - 2)
-    h = (x[cell + 1] - x[cell])[:, None]
-    t = (at - x[cell])[:, None] / h
-    chord = (y[cell + 1] - y[cell]) / h
-    a, b = slope[cell], slope[cell + 1]
-    return a + t * (6.0 * chord - 4.0 * a - 2.0 * b + t * 3.0 * (a + b - 2.0 * chord))
 
 
 def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperature: float) -> tuple[_Trace, bool, str, bool]:
@@ -356,7 +336,7 @@ def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool
     k = system.active.size
     knots = np.array(trace.position)
     position = np.linspace(knots[0], knots[-1], _NODES)
-    start = _hermite(position, knots, np.stack(trace.unknown), np.stack(trace.slope))
+    start = hermite(position, knots, np.stack(trace.unknown), np.stack(trace.slope))
     start[:, k] = feed_log_density(position, scale)
     seen = np.abs(start[:, :k]).max(axis=1) >= _BLIND
     position, start = position[seen], start[seen]
@@ -380,7 +360,7 @@ def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool
         therm = bar
     extremes = np.array(sorted({e for e in (therm, bar) if e is not None}))
     if extremes.size:
-        start = _hermite(extremes, position, unknown, slope)
+        start = hermite(extremes, position, unknown, slope)
         start[:, k] = feed_log_density(extremes, scale)
         points = system.solve(start, k, start[:, k])
         exact = points.converged & (np.abs(points.unknown[:, k + 1] - start[:, k + 1]) < 1e-3)
@@ -389,12 +369,12 @@ def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool
         columns = np.concatenate([unknown, log_pressure[:, None]], axis=1)
         grid = columns
         slopes = np.concatenate([slope, pressure_slope[:, None]], axis=1)
-        between = _hermite(extremes, position, columns, slopes)
+        between = hermite(extremes, position, columns, slopes)
         solved = np.concatenate([points.unknown, points.log_pressure[:, None]], axis=1)
         solved_slopes = np.concatenate([points.slope, points.pressure_slope[:, None]], axis=1) / stretch
         at = np.searchsorted(position, extremes)
         columns = np.insert(columns, at, np.where(exact[:, None], solved, between), axis=0)
-        fallback = _hermite_slope(extremes, position, grid, slopes)
+        fallback = hermite_slope(extremes, position, grid, slopes)
         slopes = np.insert(slopes, at, np.where(exact[:, None], solved_slopes, fallback), axis=0)
         position = np.insert(position, at, extremes)
         unknown, log_pressure = columns[:, :-1], columns[:, -1]
@@ -402,7 +382,7 @@ def _on_grid(system: IncipientPhase, trace: _Trace, scale: float, complete: bool
         log_temperature, temperature_slope = unknown[:, k + 1], slope[:, k + 1]
 
     def point(at: float) -> NamedPoint:
-        both = _hermite(
+        both = hermite(
             np.array([at]),
             position,
             np.stack([log_temperature, log_pressure], axis=1),
@@ -457,7 +437,7 @@ def _crossing(x: Floats, y: Floats, slope: Floats) -> float | None:
             low, high = float(x[i]), float(x[i + 1])
             for _ in range(50):
                 middle = 0.5 * (low + high)
-                value = float(_hermite(np.array([middle]), x[i : i + 2], y[i : i + 2, None], slope[i : i + 2, None])[0, 0])
+                value = float(hermite(np.array([middle]), x[i : i + 2], y[i : i + 2, None], slope[i : i + 2, None])[0, 0])
                 if value * y[i] > 0.0:
                     low = middle
                 else:

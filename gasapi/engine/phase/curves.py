@@ -8,12 +8,12 @@ from typing import Final, NamedTuple, cast
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import CubicSpline, PchipInterpolator
 
 from gasapi.engine.elementary import Array, exp
 from gasapi.engine.phase.boundary import HIGHEST, Boundary, NamedPoint, position_of
 from gasapi.engine.phase.energy import Floats
 from gasapi.engine.phase.region import Region
+from gasapi.engine.phase.spline import hermite, hermite_slope, monotone_slopes, spline_slopes
 from gasapi.engine.phase.table import CubicTable
 
 __all__ = ["DIRECT", "BoundaryCurve", "OddBoundary", "WaterCurve", "spline_table"]
@@ -45,11 +45,15 @@ def spline_table(x: Floats, y: Floats, grain: float) -> CubicTable:
     :param y: ordinates, shape (n,)
     :param grain: what the values and slopes at the knots are rounded to
     """
-    spline = CubicSpline(x, y)
-    knots = np.linspace(x[0], x[-1], _KNOTS + 1)
-    values = np.round(spline(knots) / grain) * grain
-    slopes = np.round(spline(knots, 1) / grain) * grain
-    return CubicTable(float(x[0]), float(x[-1]), values, slopes)
+    return _retabled(x, y, spline_slopes(x, y), _KNOTS, grain)
+
+
+def _retabled(x: Floats, y: Floats, slopes: Floats, cells: int, grain: float) -> CubicTable:
+    """Return the piecewise cubic of values and slopes on equal cells."""
+    knots = np.linspace(x[0], x[-1], cells + 1)
+    values = hermite(knots, x, y[:, None], slopes[:, None])[:, 0]
+    gradients = hermite_slope(knots, x, y[:, None], slopes[:, None])[:, 0]
+    return CubicTable(float(x[0]), float(x[-1]), np.round(values / grain) * grain, np.round(gradients / grain) * grain)
 
 
 def _falling(values: Floats) -> int:
@@ -302,9 +306,7 @@ class WaterCurve:
             ts, lps = t[a : z + 1], fine[a : z + 1]
             if ts[-1] < ts[0]:
                 ts, lps = ts[::-1], lps[::-1]
-            inverse = PchipInterpolator(ts, lps)
-            knots = np.linspace(ts[0], ts[-1], _STRETCH_KNOTS + 1)
-            table = CubicTable(float(ts[0]), float(ts[-1]), np.round(inverse(knots), 10), np.round(inverse(knots, 1), 10))
+            table = _retabled(ts, lps, monotone_slopes(ts, lps), _STRETCH_KNOTS, _LOG)
             stretches.append(_Stretch(float(ts[0]), float(ts[-1]), table))
         self._stretches = tuple(stretches)
         first = self.by_pressure(self.low)

@@ -32,7 +32,6 @@ from typing import Final
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import CubicSpline
 
 from gasapi.engine.elementary import Array, log
 from gasapi.engine.models.cubic import CubicMixture
@@ -55,6 +54,7 @@ from gasapi.engine.phase.mixture_verdict import (
     kelvin_float,
 )
 from gasapi.engine.phase.region import Region
+from gasapi.engine.phase.spline import spline_slopes
 from gasapi.engine.phase.stability import Stability, StabilityResult, StabilityTest
 from gasapi.engine.phase.table import CubicTable
 from gasapi.engine.phase.water import WATER, LiquidWater, frost_excess, is_dry, water_line
@@ -284,8 +284,8 @@ class MixturePhase:
         temperature = t / inverse
         p = self.fluid.pressure(temperature, np.full(65, rho)).pressure
         factor = p / (rho * self.energy.gas_constant * temperature)
-        spline = CubicSpline(inverse, factor)
-        self._isochore = CubicTable(0.1, 1.0, np.round(factor, 11), np.round(spline(inverse, 1), 11))
+        slopes = spline_slopes(inverse, factor)
+        self._isochore = CubicTable(0.1, 1.0, np.round(factor, 11), np.round(slopes, 11))
         self._isochore_scale = rho * self.energy.gas_constant
         self._critical_pressure = float(p[-1]) if self.critical is None else self.critical.pressure
 
