@@ -17,10 +17,15 @@ from gasapi.engine.protocol import Branch, PressureDerivatives, Solution, Status
 from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, Reason
 
-__all__ = ["Block", "Point", "evaluate_block", "evaluate_float"]
+__all__ = ["Block", "Point", "evaluate_block", "evaluate_float", "is_state"]
 
 # a generalised equation is good where its stated uncertainty is at most this
 GOOD_UNCERTAINTY: Final = 0.01
+
+# beyond these a number is no state of matter; the least pressure keeps a density off the end of a double (Pa, Pa, K)
+_THINNEST: Final = 1e-100
+_HIGHEST: Final = 1e13
+_HOTTEST: Final = 1e6
 
 _OUTSIDE_VALIDITY = int(Reason.OUTSIDE_VALIDITY)
 _OUTSIDE_LIMITS = int(Reason.OUTSIDE_LIMITS)
@@ -71,6 +76,17 @@ class Block(NamedTuple):
     uncertainty: Array
 
 
+def is_state(temperature: Array, pressure: Array) -> NDArray[np.bool_]:
+    """Return which rows are states at all, shape (n,): what ``evaluate_float`` calls a bad input is not.
+
+    :param temperature: K, shape (n,)
+    :param pressure: Pa, shape (n,)
+    """
+    with np.errstate(invalid="ignore"):
+        warm: NDArray[np.bool_] = (temperature > 0.0) & (temperature < _HOTTEST)
+        return warm & (pressure >= _THINNEST) & (pressure < _HIGHEST)
+
+
 def evaluate_float(model: PreparedModel, temperature: float, pressure: float, margin: float) -> Point:
     """Return the state at one temperature and pressure.
 
@@ -78,7 +94,7 @@ def evaluate_float(model: PreparedModel, temperature: float, pressure: float, ma
     :param pressure: Pa
     :param margin: where nearness to the dew point begins, K
     """
-    if not (0.0 < temperature < 1e6 and 0.0 < pressure < 1e13):
+    if not (0.0 < temperature < _HOTTEST and _THINNEST <= pressure < _HIGHEST):
         return Point(0.0, model.flags | _INPUT_BAD, _UNKNOWN_REGION, None)
     flags = model.flags
     inside, extended = model.validity, model.extended
@@ -175,8 +191,7 @@ def evaluate_block(model: PreparedModel, temperature: Array, pressure: Array, ma
     uncertainty = np.full(n, np.nan)
     region = np.full(n, _UNKNOWN_REGION, dtype=np.int8)
     flags = np.full(n, model.flags, dtype=np.int64)
-    with np.errstate(invalid="ignore"):
-        usable = (temperature > 0.0) & (temperature < 1e6) & (pressure > 0.0) & (pressure < 1e13)
+    usable = is_state(temperature, pressure)
     flags[~usable] |= _INPUT_BAD
     rows = np.flatnonzero(usable)
     t, p = temperature.take(rows), pressure.take(rows)

@@ -99,8 +99,9 @@ class PhaseJudge(Protocol):
 class PreparedModel:
     """A model for one gas. Immutable.
 
-    ``fractions`` are mole fractions and ``molar_masses`` (kg/mol) those of the model, in the order of the gas's components; ``flags`` are reasons that hold at every state;
-    ``generalised`` models have no published range of their own; ``gas_only`` models have no liquid.
+    ``fractions`` are mole fractions and ``molar_masses`` (kg/mol) those of the model, in the order of the gas's components;
+    ``flags`` are reasons that hold at every state; ``generalised`` models have no published range of their own;
+    ``gas_only`` models have no liquid.
     """
 
     id: str

@@ -27,7 +27,7 @@ from gasapi.errors import FractionsInvalid
 from gasapi.gases.records import Substance
 from gasapi.service.answers import GasAnswer, ModelAnswer
 from gasapi.service.context import Context, GasModels
-from gasapi.service.evaluation import evaluate_block
+from gasapi.service.evaluation import evaluate_block, is_state
 from gasapi.service.models import why_not
 from gasapi.service.prepared import PreparedModel
 from gasapi.service.quality import BAD, LEVELS, Reason, level_codes
@@ -225,7 +225,7 @@ class Survey:
         empty = np.zeros(0)
         t = np.concatenate([empty, *self._temperature])
         p = np.concatenate([empty, *self._pressure])
-        usable = _usable(t, p)
+        usable = is_state(t, p)
         return choose_for_rows(models, self._question.model, t[usable], p[usable])
 
 
@@ -387,7 +387,7 @@ class Series:
             model, gas = self._of_row(x)
             if model is None:
                 t, p = columns.temperature.take(rows), columns.pressure.take(rows)
-                flags[rows] |= np.where(_usable(t, p), _FRACTIONS_BAD, _FRACTIONS_BAD | _INPUT_BAD) | self._ambient_flags(p)
+                flags[rows] |= np.where(is_state(t, p), _FRACTIONS_BAD, _FRACTIONS_BAD | _INPUT_BAD) | self._ambient_flags(p)
                 continue
             for start in range(0, rows.size, BLOCK_ROWS):
                 self._pause()
@@ -532,12 +532,6 @@ def _accept_two_phase(
         if found is not None:
             molar[i] = found.density
             flags[i] = flags[i] & ~_TWO_PHASE | int(Reason.TWO_PHASE_ACCEPTED)
-
-
-def _usable(temperature: Array, pressure: Array) -> NDArray[np.bool_]:
-    """Return which rows are states at all, by the bounds of ``evaluate_block``, shape (n,)."""
-    with np.errstate(invalid="ignore"):
-        return cast("NDArray[np.bool_]", (temperature > 0.0) & (temperature < 1e6) & (pressure > 0.0) & (pressure < 1e13))
 
 
 def _good_fractions(fractions: Array) -> NDArray[np.bool_]:

@@ -357,3 +357,11 @@ def test_no_random_state_within_one_kelvin_of_boiling_is_plainly_good(ask):
             boundary = 1e4 + warm.phase.margin_pressure
             answer = ask(gas, t, boundary * 0.985)
             assert answer.quality.level == "uncertain"
+
+
+@pytest.mark.parametrize("pressure", [5e-324, 1e-300, 1e-101, 1e13, 1e300])
+def test_pressures_at_the_ends_of_a_double_are_bad_and_never_raise(ask, pressure):
+    """Where a density would leave the range of a double there is no state to answer."""
+    for model in MODEL_IDS:
+        assert ask("nitrogen", 613.0, pressure, model).quality.level == "bad"
+    assert ask("nitrogen", 613.0, 1e-99).compressibility_factor == pytest.approx(1.0)
