@@ -54,9 +54,14 @@ class Freshness:
         self._plain = ("Cache-Control", f"{whose}, max-age={max_age}")
         self._site = ("Cache-Control", "private, no-cache" if private else "no-cache")
 
+    @staticmethod
+    def keeps(path: str) -> bool:
+        """Return whether answers at a path may be kept; counters, health and the page may not, or say so themselves."""
+        return path.startswith("/v1/") or path == _OPEN_DOCUMENT
+
     def of(self, path: str, query: str, accept: str) -> Caching | None:
         """Return the fields for a GET, None where its answer is not to be kept: counters, health, the page."""
-        if not (path.startswith("/v1/") or path == _OPEN_DOCUMENT):
+        if not self.keeps(path):
             return None
         digest = self._base.copy()
         digest.update(f"{path}\n{query}\n{accept}".encode("utf-8", "surrogateescape"))

@@ -19,6 +19,8 @@ from marshmallow.fields import Field
 
 from gasapi import __version__
 from gasapi.web import answer_schemas as answers
+from gasapi.web.caching import Freshness
+from gasapi.web.edge import LARGE
 from gasapi.web.fields import Member
 from gasapi.web.job_operations import JOB_OPERATIONS
 from gasapi.web.metrics import CONTENT_TYPE
@@ -230,7 +232,19 @@ OPERATIONS: Final[tuple[Operation, ...]] = (
 _PROBLEM_HEADERS: Final[Mapping[int, Mapping[str, Any]]] = {
     401: {"WWW-Authenticate": {"description": "How to show a token (RFC 6750).", "schema": {"type": "string"}}},
     405: {"Allow": {"description": "The methods that are allowed.", "schema": {"type": "string"}}},
+    429: {"Retry-After": {"description": "Seconds to wait.", "schema": {"type": "integer"}}},
     503: {"Retry-After": {"description": "Seconds to wait.", "schema": {"type": "integer"}}},
+}
+_KEPT_HEADERS: Final[Mapping[str, Any]] = {
+    "ETag": {"description": "Weak validator of question and data (RFC 9110).", "schema": {"type": "string"}},
+    "Cache-Control": {"description": "How long the answer keeps (RFC 9111).", "schema": {"type": "string"}},
+}
+_PREFER: Final[Mapping[str, Any]] = {
+    "name": "Prefer",
+    "in": "header",
+    "description": "wait=<seconds>: how long the caller waits for the answer (RFC 7240); then 503, and the work stops.",
+    "schema": {"type": "string"},
+    "example": "wait=20",
 }
 
 
@@ -312,7 +326,12 @@ def _operation(operation: Operation, ask: Any) -> dict[str, Any]:
     }
     if not operation.open:
         described["security"] = [{"token": []}, {}]
+    if Freshness.keeps(operation.path) and operation.method == "get":
+        described["responses"]["200"]["headers"] = dict(_KEPT_HEADERS)
+        described["responses"]["304"] = {"description": "The answer that If-None-Match names is still the answer"}
     parameters = [*operation.parameters, *(_parameters(operation.query) if operation.query else ())]
+    if operation.path in LARGE:
+        parameters.append(dict(_PREFER))
     if parameters:
         described["parameters"] = parameters
     if operation.body is not None:
@@ -321,7 +340,7 @@ def _operation(operation: Operation, ask: Any) -> dict[str, Any]:
         if examples:
             content["examples"] = examples
         described["requestBody"] = {"required": True, "content": {_JSON: content, **operation.other_bodies}}
-    for status in operation.refusals:
+    for status in sorted({*operation.refusals, *(() if operation.open else (429,))}):
         described["responses"][str(status)] = KINDS[status].component
     if ask is not None:
         for example in operation.examples:
