@@ -48,28 +48,36 @@ class Share:
         self._task = _Task(site, question, columns)
 
     def __enter__(self) -> Self:
-        self._folder = tempfile.TemporaryDirectory(prefix="gasapi-share-")
-        folder = Path(self._folder.name)
+        self._folder: tempfile.TemporaryDirectory[str] | None = None
+        self._process: subprocess.Popen[bytes] | None = None
+        try:
+            self._folder = tempfile.TemporaryDirectory(prefix="gasapi-share-")
+            self._process = self._started(Path(self._folder.name))
+        except OSError:
+            # no room, or no more processes: the share is answered here
+            self._process = None
+        return self
+
+    def _started(self, folder: Path) -> subprocess.Popen[bytes]:
         (folder / _QUESTION).write_bytes(pickle.dumps(self._task))
-        environment = {**os.environ, "PYTHONPATH": os.pathsep.join(path for path in sys.path if path)}
-        self._process = subprocess.Popen(
+        return subprocess.Popen(
             [sys.executable, "-m", "gasapi.service.share", str(folder)],
-            env=environment,
+            env={**os.environ, "PYTHONPATH": os.pathsep.join(path for path in sys.path if path)},
             stdin=subprocess.DEVNULL,
             stdout=subprocess.DEVNULL,
             stderr=subprocess.DEVNULL,
         )
-        return self
 
     def __exit__(self, *exception: object) -> None:
-        if self._process.poll() is None:
+        if self._process is not None and self._process.poll() is None:
             self._process.kill()
             self._process.wait()
-        self._folder.cleanup()
+        if self._folder is not None:
+            self._folder.cleanup()
 
     def result(self) -> Any:
         """Return the rows and the tally of the share once they are there, None where the process failed."""
-        if self._process.wait() != 0:
+        if self._process is None or self._folder is None or self._process.wait() != 0:
             return None
         return pickle.loads((Path(self._folder.name) / _ANSWER).read_bytes())
 

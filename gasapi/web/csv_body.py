@@ -240,7 +240,7 @@ def put_aside(environ: Environ, limit: int) -> IO[bytes]:
 
     :param limit: bytes that it may have
     :raises Problem: 400 where the body breaks off or its chunks are broken; 408 where it does not come; 413 where it is longer
-        than the limit
+        than the limit; 503 where there is no room for it
     """
     length = announced_length(environ)
     if length is not None and length > limit:
@@ -249,28 +249,20 @@ def put_aside(environ: Environ, limit: int) -> IO[bytes]:
     # closed by the caller, or with the last reference to it
     body = tempfile.SpooledTemporaryFile(max_size=HELD)  # noqa: SIM115
     held = 0
+    most = limit + 1 if length is None else length
     try:
-        most = limit + 1 if length is None else length
-        while held < most and (piece := stream.read(min(_PIECE, most - held))):
+        while held < most and (piece := _read(stream, min(_PIECE, most - held))):
             held += len(piece)
             if held > limit:
                 raise _too_large(limit)
             body.write(piece)
-    except TimeoutError:
-        raise Problem(408, "the body did not arrive in time; send it again") from None
     except Problem:
         body.close()
         raise
-    except OSError as error:
+    except OSError:
+        # a disk without room is no fault of the question
         body.close()
-        if error.errno in (errno.ENOSPC, errno.EDQUOT):
-            words = "there is no room now to put so large a body aside; ask again, or send it in parts"
-            raise Problem(503, words, headers=[("Retry-After", "5")]) from None
-        raise Problem(400, _BROKEN) from None
-    except Exception:
-        body.close()
-        # each server has exceptions of its own for broken chunks and connections; none is the service's fault
-        raise Problem(400, _BROKEN) from None
+        raise Problem(503, "there is no room to put the body aside; ask again later", headers=[("Retry-After", "60")]) from None
     if length is not None and held < length:
         body.close()
         raise Problem(400, f"the body ends after {held} of the {length} bytes that were announced")
@@ -282,6 +274,17 @@ def put_aside(environ: Environ, limit: int) -> IO[bytes]:
             body.close()
             raise
     return body
+
+
+def _read(stream: Any, size: int) -> bytes:
+    try:
+        piece: bytes = stream.read(size)
+    except TimeoutError:
+        raise Problem(408, "the body did not arrive in time; send it again") from None
+    except Exception:
+        # each server has exceptions of its own for broken chunks and connections; none is the service's fault
+        raise Problem(400, "the body cannot be read: its chunks are broken, or the connection ended") from None
+    return piece
 
 
 def _too_large(limit: int) -> Problem:

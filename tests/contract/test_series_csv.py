@@ -251,3 +251,16 @@ def test_more_than_is_held_in_memory(post):
     answer = post(body)
     assert answer.data.count(b"\r\n") == rows + 1
     assert answer.data.count(b",0,46.5432812299138,") == rows
+
+
+def test_a_full_disk_is_told(post, monkeypatch):
+    """As something to wait for, not as a fault of the question."""
+
+    class Full(io.BytesIO):
+        def write(self, data):
+            raise OSError(28, "No space left on device")
+
+    monkeypatch.setattr("gasapi.web.csv_body.tempfile.SpooledTemporaryFile", lambda max_size: Full())
+    answer = post(f"{HEADER}\n1,40,25,a\n")
+    assert answer.status_code == 503
+    assert answer.headers["Retry-After"] == "60"

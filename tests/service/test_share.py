@@ -52,11 +52,12 @@ def test_shares_have_the_bits_of_the_whole(context, columns, monkeypatch, fails)
     assert whole == joined
 
 
-def test_a_process_that_cannot_start_is_no_failure(context, columns, monkeypatch):
+@pytest.mark.parametrize("command", ["/bin/false", "/no/such/command"])
+def test_a_process_that_cannot_start_is_no_failure(context, columns, monkeypatch, command):
     """Its share is answered here."""
     monkeypatch.setattr(module, "_SHARED_FROM", 2)
     monkeypatch.setattr(module, "cores", lambda: 3)
-    monkeypatch.setattr(share.sys, "executable", "/bin/false")
+    monkeypatch.setattr(share.sys, "executable", command)
     expected, _ = answer(context, columns, shares=False)
     found, _ = answer(context, columns)
     assert np.array_equal(expected.density, found.density, equal_nan=True)
