@@ -6,7 +6,6 @@ The body is put aside before the answer begins, since a client that is still sen
 
 from __future__ import annotations
 
-import errno
 import tempfile
 from collections.abc import Iterator, Mapping, Sequence
 from typing import IO, Any, NamedTuple
@@ -262,7 +261,8 @@ def put_aside(environ: Environ, limit: int) -> IO[bytes]:
     except OSError:
         # a disk without room is no fault of the question
         body.close()
-        raise Problem(503, "there is no room to put the body aside; ask again later", headers=[("Retry-After", "60")]) from None
+        words = "there is no room now to put so large a body aside; ask again, or send it in parts"
+        raise Problem(503, words, headers=[("Retry-After", "5")]) from None
     if length is not None and held < length:
         body.close()
         raise Problem(400, f"the body ends after {held} of the {length} bytes that were announced")
@@ -283,7 +283,7 @@ def _read(stream: Any, size: int) -> bytes:
         raise Problem(408, "the body did not arrive in time; send it again") from None
     except Exception:
         # each server has exceptions of its own for broken chunks and connections; none is the service's fault
-        raise Problem(400, "the body cannot be read: its chunks are broken, or the connection ended") from None
+        raise Problem(400, _BROKEN) from None
     return piece
 
 

@@ -263,4 +263,4 @@ def test_a_full_disk_is_told(post, monkeypatch):
     monkeypatch.setattr("gasapi.web.csv_body.tempfile.SpooledTemporaryFile", lambda max_size: Full())
     answer = post(f"{HEADER}\n1,40,25,a\n")
     assert answer.status_code == 503
-    assert answer.headers["Retry-After"] == "60"
+    assert answer.headers["Retry-After"] == "5"
