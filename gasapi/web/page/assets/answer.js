@@ -10,6 +10,7 @@ const at = (id) => document.getElementById(id);
 /** Draw an answer. `units` holds the chosen unit of each quantity, `ambient` the ambient pressure in Pa. */
 export function drawAnswer(answer, units, ambient) {
   const { result, model, quality } = answer;
+  at("stands").classList.remove("unanswered");
   const digits = digitsFor(model?.relative_uncertainty);
   at("density").textContent = shown(result.density, digits);
   at("density").title = result.density === null ? "" : String(result.density);
@@ -26,8 +27,13 @@ export function clearAnswer(words) {
   for (const id of ["density", "factor", "volume"]) at(id).textContent = "–";
   at("density-band").textContent = "";
   at("verdict").className = "verdict bad";
-  at("verdict").replaceChildren(qualityMark("bad"), words);
+  at("verdict").dataset.words = "";
+  at("verdict").title = "";
+  at("verdict").replaceChildren(qualityMark("bad"), html("span", {}, words));
   at("reasons").replaceChildren();
+  at("cautions").replaceChildren();
+  // the picture stays in its place, but cannot be taken for that of the new question
+  at("stands").classList.add("unanswered");
 }
 
 function drawVerdict(quality) {
