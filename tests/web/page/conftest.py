@@ -44,8 +44,9 @@ def origin():
         yield address
 
 
-@pytest.fixture(scope="session")
+@pytest.fixture(scope="module")
 def browser():
+    # not for the session: its event loop would still run while other tests want one of their own
     path = _chromium()
     with sync_playwright() as playwright:
         browser = playwright.chromium.launch(executable_path=path, args=list(FLAGS))
