@@ -83,7 +83,7 @@ def test_the_same_question_has_the_same_bytes(ask):
 
 def test_missing_and_absurd_rows_are_bad_rows(ask):
     """null, zero and negative, beyond all range, and below absolute zero; the others are answered."""
-    pressure = [40, None, 0, -5, 1e30, 40, 40, 40, 1e-300]
+    pressure = [40, None, 0, -5, 1e30, 40, 40, 40, 1e-90]
     temperature = [300, 300, 300, 300, 300, None, 0, -1e300, 300]
     status, answer = ask({"gas": "nitrogen", "pressure": pressure, "temperature": temperature, "units": {"pressure": "bar"}})
     assert status == 200
