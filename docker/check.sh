@@ -61,7 +61,7 @@ await_health() {
 
 # ---- the tools, where the machine lacks them
 packages=()
-for name in docker.io:dockerd mmdebstrap:mmdebstrap openssl:openssl curl:curl; do
+for name in docker.io:dockerd mmdebstrap:mmdebstrap systemd:systemd-analyze openssl:openssl curl:curl; do
   command -v "${name#*:}" >/dev/null || packages+=("${name%:*}")
 done
 if [ ${#packages[@]} -gt 0 ]; then
@@ -107,6 +107,19 @@ if [ ! -x "$compose" ]; then
   compose=$W/apt$compose
 fi
 say "compose $("$compose" version --short)"
+
+# the unit of systemd, and the rules for Prometheus with their own tests
+mkdir "$W/unit"
+sed 's#/opt/gasapi/bin/gasapi#/bin/true#' docker/gasapi.service >"$W/unit/gasapi.service"
+same "" "$(systemd-analyze verify "$W/unit/gasapi.service" 2>&1)" "complaints of systemd about the unit"
+if ! command -v promtool >/dev/null; then
+  mkdir "$W/prometheus"
+  (cd "$W/prometheus" && { apt-get download -q prometheus || { apt-get update -q && apt-get download -q prometheus; } } &&
+    dpkg-deb -x prometheus_*.deb .) >"$W/prometheus.log" 2>&1 || { tail "$W/prometheus.log" >&2; fail "no promtool"; }
+  PATH=$PATH:$W/prometheus/usr/bin
+fi
+promtool test rules docker/prometheus-rules-test.yaml >"$W/rules.log" 2>&1 || { cat "$W/rules.log" >&2; fail "the rules are wrong"; }
+say "unit of systemd and rules for Prometheus"
 
 # an install on a machine without a network: a folder of wheels, named by hash, and nothing else
 python3 -m venv "$W/tools"

@@ -78,7 +78,7 @@ def create_app(settings: Settings | None = None, context: Context | None = None,
     metrics = Metrics(settings.metrics_folder)
     context = context or create_context(settings)
     house = _house(settings, context, metrics.audit_failure)
-    parts = Parts(context, settings, metrics, house.gate)
+    parts = Parts(context, settings, metrics, house.gate, tokens)
     metrics.built(__version__, context.data, {gas.id for gas in context.catalogue.gases})
     app = Flask("gasapi", static_folder=None)
     app.json = OrjsonProvider(app)

@@ -337,3 +337,4 @@ class HealthSchema(Schema):
     status = _text()
     version = fields.String()
     data = fields.String()
+    checks = fields.Dict(keys=fields.String(), values=fields.String())

@@ -199,7 +199,7 @@ OPERATIONS: Final[tuple[Operation, ...]] = (
         "getReadiness",
         "operation",
         "Whether questions are answered",
-        "With the version and the hash of the data. Answered without a token.",
+        "With the version, the hash of the data, and what stands in the way. Answered without a token.",
         {_JSON: answers.HealthSchema},
         refusals=(500, 503),
         examples=(Example("ready", "It is ready"),),

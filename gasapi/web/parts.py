@@ -7,15 +7,17 @@ from typing import NamedTuple
 from gasapi.service.context import Context
 from gasapi.settings import Settings
 from gasapi.web.metrics import Metrics
+from gasapi.web.tokens import TokenList
 from gasapi.web.turns import Gate
 
 __all__ = ["Parts"]
 
 
 class Parts(NamedTuple):
-    """The service's context, the settings, the counters and the gate of large questions of one worker."""
+    """The service's context, the settings, the counters, the gate of large questions and the tokens of one worker."""
 
     context: Context
     settings: Settings
     metrics: Metrics
     gate: Gate
+    tokens: TokenList | None = None

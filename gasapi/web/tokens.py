@@ -65,6 +65,11 @@ class TokenList:
             raise TokenFileError(0, "there is no token in it")
         return cls(tokens)
 
+    def any_good(self, today: date | None = None) -> bool:
+        """Return whether there is a token left that has not expired."""
+        day = today or datetime.now(UTC).date()
+        return any(token.last_day is None or day <= token.last_day for token in self._tokens)
+
     def holder(self, authorization: str, today: date | None = None) -> str | None:
         """Return the name of the holder of a token, None where it is not good.
 
