@@ -222,7 +222,8 @@ def test_slow_clients_do_not_keep_others_waiting(server, sent):
             start = time.perf_counter()
             assert server.ask("POST", "/v1/state", QUESTION, JSON)[0] == 200
             times.append(time.perf_counter() - start)
-        assert sorted(times)[10] < 0.1
+        # the slow clients would hold others for as long as they like: seconds, not milliseconds
+        assert sorted(times)[10] < 0.5
     finally:
         for connection in slow:
             connection.close()

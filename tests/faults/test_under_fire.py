@@ -131,7 +131,7 @@ def narrow():
 
 
 def test_small_questions_are_not_starved_by_large_ones(narrow):
-    """Beside eight series of 100,000 rows, all answered, one worker answers small questions within 0.1 s in the median."""
+    """Beside eight series of 100,000 rows, all answered, one worker answers small questions in half a second, not after them."""
     body = series(100_000)
     small = json.dumps({"gas": "argon", "pressure": 4e6, "temperature": 300}).encode()
     with ThreadPoolExecutor(8) as pool:
@@ -145,7 +145,7 @@ def test_small_questions_are_not_starved_by_large_ones(narrow):
     assert [200] * 8 == [status for status, _, _ in answers]
     assert 1 == len({answer.partition(b'"trace"')[0] for _, _, answer in answers})
     assert len(times) > 10
-    assert sorted(times)[len(times) // 2] < 0.1
+    assert sorted(times)[len(times) // 2] < 0.5
 
 
 def test_overload_is_told_and_passes():

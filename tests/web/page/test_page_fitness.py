@@ -117,7 +117,7 @@ def test_page_and_assets_are_small(visit):
 
 
 def test_paint_and_answers_are_measured(visit):
-    """Every visit marks its first paint and every change its answer; the figures are printed, since a clock proves nothing here."""
+    """Every visit marks its first paint and every change its answer; the figures are printed, a clock proves nothing."""
     here = visit(None)
     paints = []
     for _ in range(4):
