@@ -131,7 +131,7 @@ def narrow():
 
 
 def test_small_questions_are_not_starved_by_large_ones(narrow):
-    """Beside eight series of 100,000 rows, all answered, one worker answers small questions in half a second, not after them."""
+    """Beside eight series of 100,000 rows, all answered, one worker answers small questions in between."""
     body = series(100_000)
     small = json.dumps({"gas": "argon", "pressure": 4e6, "temperature": 300}).encode()
     with ThreadPoolExecutor(8) as pool:
