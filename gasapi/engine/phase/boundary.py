@@ -12,17 +12,15 @@ from typing import Any, Final, NamedTuple
 
 import numpy as np
 
-from gasapi.engine.phase.energy import Floats, MixtureEnergy
+from gasapi.engine.phase.energy import Floats
 from gasapi.engine.phase.incipient import IncipientPhase, Points
 from gasapi.engine.phase.spline import hermite, hermite_slope
-from gasapi.engine.protocol import Branch, Status
 
-__all__ = ["HIGHEST", "Boundary", "NamedPoint", "position_of", "trace_boundary", "wilson_start"]
+__all__ = ["HIGHEST", "Boundary", "NamedPoint", "position_of", "trace_boundary"]
 
 _LOWEST_PRESSURE: Final = 1e3
 HIGHEST: Final = "the highest pressure was reached"
 
-_START_PRESSURES: Final = (2e5, 5e4, 1e4, 1e3, 7e5, 2e6, 6e6, 2e7, 6e7)
 _HIGHEST_PRESSURE: Final = 1e8
 _ABOVE: Final = 0.2
 """How far above the cricondenbar, in ln p, a bubble line that rises again is followed."""
@@ -69,87 +67,6 @@ class Boundary(NamedTuple):
     end: str
     reached: bool
     """Whether the dew line was followed down to its lowest pressure, or to the coldest liquid of the equation."""
-
-
-def wilson_start(
-    system: IncipientPhase, log_pressure: float | None, temperature: float | None, vapour: bool = False
-) -> tuple[float, float, Floats] | None:
-    """Return temperature, K, ln p and the composition of a first liquid drop (or bubble) after Wilson's K-values.
-
-    K_i = (pc_i/p) exp(5.373 (1 + omega_i)(1 - Tc_i/T)) (Wilson, 65th AIChE meeting (1969)). One of pressure and temperature is
-    given. None where no temperature between 20 and 2000 K answers.
-    """
-    e, z = system.energy, system.fractions[system.active]
-    log_pc = np.log(e.critical_pressures[system.active])
-    growth = 5.373 * (1.0 + e.acentric_factors[system.active])
-    tc = e.critical_temperatures[system.active]
-
-    def amounts(t: float) -> Floats:
-        """Return z_i p / K_i, or z_i K_i / p."""
-        exponent = log_pc + growth * (1.0 - tc / t)
-        return z * np.exp(np.minimum(exponent if vapour else -exponent, 600.0))
-
-    if temperature is not None:
-        x = amounts(temperature)
-        total = float(x.sum())
-        log_p = math.log(total) if vapour else -math.log(total)
-        return temperature, log_p, x / total
-    assert log_pressure is not None
-    target = math.exp(log_pressure if vapour else -log_pressure)
-    low, high = 20.0, 2000.0
-    sign = 1.0 if vapour else -1.0
-    if sign * (float(amounts(low).sum()) - target) > 0.0 or sign * (float(amounts(high).sum()) - target) < 0.0:
-        return None
-    for _ in range(60):
-        middle = 0.5 * (low + high)
-        if sign * (float(amounts(middle).sum()) - target) > 0.0:
-            high = middle
-        else:
-            low = middle
-    x = amounts(low)
-    return low, log_pressure, x / x.sum()
-
-
-def _start_point(system: IncipientPhase, log_pressure: float | None, temperature: float | None) -> Points | None:
-    guess = wilson_start(system, log_pressure, temperature)
-    if guess is None:
-        return None
-    t, log_p, x = guess
-    energy = system.energy
-    fractions = np.zeros((1, system.fractions.size))
-    fractions[0, system.active] = x
-    t_row, p_row = np.array([t]), np.array([math.exp(log_p)])
-    liquid, status = energy.density(t_row, p_row, fractions, Branch.LIQUID)
-    packed = float(energy.close_packing(fractions)[0])
-    dense = float(liquid[0]) if status[0] == Status.CONVERGED and liquid[0] > 0.3 * packed else 0.75 * packed
-    log_rho = log_p - math.log(energy.gas_constant * t)
-    start = np.empty((1, system.size))
-    k = system.active.size
-    start[0, :k] = np.log(np.maximum(x, 1e-250) * dense / system.fractions[system.active]) - log_rho
-    start[0, k], start[0, k + 1] = log_rho, math.log(t)
-    spec = -1 if temperature is None else k + 1
-    points = system.solve(start, spec, np.array([log_p]) if temperature is None else start[:, k + 1])
-    kappa = points.unknown[0, :k]
-    return points if points.converged[0] and float(np.abs(kappa).max()) > 1.0 else None
-
-
-def _first_point(system: IncipientPhase, lowest_temperature: float) -> tuple[Points | None, str]:
-    """Return the dew point from which the trace starts: at a moderate pressure, whose liquid is not too cold.
-
-    At lower pressures and temperatures a second liquid may be near, and the trace would set out on the wrong one.
-    """
-    cold = False
-    for pressure in _START_PRESSURES:
-        if cold and pressure <= _START_PRESSURES[0]:
-            continue
-        points = _start_point(system, math.log(pressure), None)
-        if points is not None:
-            t = math.exp(points.unknown[0, -1])
-            liquid = system.incipient_densities(points.unknown)
-            if t >= max(lowest_temperature, float(system.energy.lowest_temperature(liquid / liquid.sum(axis=1)[:, None])[0])):
-                return points, ""
-            cold = True
-    return None, "no dew point in the range of the equation"
 
 
 class _Trace:
@@ -313,19 +230,19 @@ def _follow_down(system: IncipientPhase, trace: _Trace, lowest_temperature: floa
     return reached
 
 
-def trace_boundary(energy: MixtureEnergy, fractions: Floats, lowest_temperature: float) -> tuple[Boundary | None, str]:
-    """Trace the boundary of a mixture.
+def trace_boundary(system: IncipientPhase, start: Floats, lowest_temperature: float) -> tuple[Boundary | None, str]:
+    """Trace the boundary of a mixture, both ways from one of its dew points.
 
-    :param energy: the equation of state
-    :param fractions: mole fractions of the feed, shape (n,), all above 0, [-]
+    :param system: the equations of the feed, with all its components active
+    :param start: the unknowns of a dew point, shape (k + 2,)
     :param lowest_temperature: K, where the equation ends
     :returns: the boundary, or None and why there is none
     """
-    system = IncipientPhase(energy, fractions, np.ones(fractions.size, dtype=bool))
-    first, why = _first_point(system, lowest_temperature)
-    if first is None:
-        return None, why
-    scale = float(energy.close_packing(fractions[None])[0]) / 3.6
+    energy, k = system.energy, system.active.size
+    first = system.step_along(start, float(start[k]))
+    if not first.converged[0]:
+        return None, "the first dew point could not be solved"
+    scale = float(energy.close_packing(system.fractions[None])[0]) / 3.6
     trace, complete, end, reached = _follow(system, first, scale, lowest_temperature)
     if len(trace.position) < 4:
         return None, end

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import math
+from copy import copy
+from enum import IntEnum
 from itertools import pairwise
 from typing import Final, NamedTuple, cast
 
@@ -11,12 +13,13 @@ from numpy.typing import NDArray
 
 from gasapi.engine.elementary import Array, exp
 from gasapi.engine.phase.boundary import HIGHEST, Boundary, NamedPoint, position_of
+from gasapi.engine.phase.dew_search import DewPoints
 from gasapi.engine.phase.energy import Floats
 from gasapi.engine.phase.region import Region
 from gasapi.engine.phase.spline import hermite, hermite_slope, monotone_slopes, spline_slopes
 from gasapi.engine.phase.table import CubicTable
 
-__all__ = ["DIRECT", "BoundaryCurve", "OddBoundary", "WaterCurve", "spline_table"]
+__all__ = ["DIRECT", "BelowBranch", "BoundaryCurve", "Curve", "DewBranch", "OddBoundary", "WaterCurve", "spline_table"]
 
 DIRECT: Final = -1
 """In place of a region: the curve does not tell."""
@@ -26,6 +29,10 @@ _LIQUID: Final = int(Region.LIQUID)
 _TWO_PHASE: Final = int(Region.TWO_PHASE)
 _FEWEST: Final = 8
 _KNOTS: Final = 160
+_MOST_KNOTS: Final = 2000
+_MET: Final = 1e4
+"""By how many grains a table may miss its points: a millikelvin, or 1e-6 in ln p."""
+
 _FINE: Final = 8
 _STRETCH_KNOTS: Final = 96
 _LEAST_INVERSE: Final = 1e-4
@@ -49,11 +56,16 @@ def spline_table(x: Floats, y: Floats, grain: float) -> CubicTable:
 
 
 def _retabled(x: Floats, y: Floats, slopes: Floats, cells: int, grain: float) -> CubicTable:
-    """Return the piecewise cubic of values and slopes on equal cells."""
-    knots = np.linspace(x[0], x[-1], cells + 1)
-    values = hermite(knots, x, y[:, None], slopes[:, None])[:, 0]
-    gradients = hermite_slope(knots, x, y[:, None], slopes[:, None])[:, 0]
-    return CubicTable(float(x[0]), float(x[-1]), np.round(values / grain) * grain, np.round(gradients / grain) * grain)
+    """Return the piecewise cubic of values and slopes on equal cells, enough of them to meet the values."""
+    while True:
+        knots = np.linspace(x[0], x[-1], cells + 1)
+        values = hermite(knots, x, y[:, None], slopes[:, None])[:, 0]
+        gradients = hermite_slope(knots, x, y[:, None], slopes[:, None])[:, 0]
+        table = CubicTable(float(x[0]), float(x[-1]), np.round(values / grain) * grain, np.round(gradients / grain) * grain)
+        off = np.abs(cast(Floats, table(x)) - y)
+        if cells > _MOST_KNOTS or bool((off <= _MET * grain).all()):
+            return table
+        cells *= 4
 
 
 def _falling(values: Floats) -> int:
@@ -71,16 +83,11 @@ class BoundaryCurve:
     :param b: the traced boundary
     :param shift: added to its ln p: the share of the pressure that the traced mixture has
     :param coldest: K; a line that begins below is taken to begin there because the equation ends
-    :param dew_only: whether the bubble line is not to be believed: below its dew temperature all is two-phase
-    :param cut: whether an open line ends at its highest temperature already
     :raises OddBoundary: for a boundary that turns more often than this
     """
 
-    def __init__(self, b: Boundary, shift: float, coldest: float, dew_only: bool = False, cut: bool = False) -> None:
+    def __init__(self, b: Boundary, shift: float, coldest: float) -> None:
         lp, t = b.log_pressure + shift, np.exp(b.log_temperature)
-        if cut:
-            last = _node(b, b.cricondentherm, t) + 1
-            lp, t = lp[:last], t[:last]
         if lp.size < _FEWEST:
             raise OddBoundary
         top = _node(b, b.cricondenbar, lp)
@@ -94,22 +101,22 @@ class BoundaryCurve:
         w[: top + 1] *= -1.0
         w[top] = 0.0
         self.log_first = round(float(lp[0]), 10)
-        self.log_last = round(float(used[-1]), 10) if fall > 1 and not dew_only else math.inf
-        self.log_end = self.log_top if dew_only or cut else float(lp[-1])
+        self.log_last = round(float(used[-1]), 10) if fall > 1 else math.inf
+        self.log_end = float(lp[-1])
         hot = _node(b, b.cricondentherm, t)
         if _falling(t[: hot + 1][::-1]) != hot + 1:
             raise OddBoundary
-        fall_hot = _falling(t[hot:]) if b.cricondentherm is not None and not cut else 1
+        fall_hot = _falling(t[hot:]) if b.cricondentherm is not None else 1
         self.hottest = round(float(t[hot]), 7)
         u = np.sqrt(np.maximum(self.hottest - t[: hot + fall_hot], 0.0))
         u[: hot + 1] *= -1.0
         u[hot] = 0.0
         self.coldest_first = float(t[0])
-        self.coldest_top = float(t[hot + fall_hot - 1]) if fall_hot > 1 and not dew_only else math.inf
+        self.coldest_top = float(t[hot + fall_hot - 1]) if fall_hot > 1 else math.inf
         # what lies below the coldest point of the far side: liquid under a bubble line that was followed to its end, two phases
         # under a line that rises without end, and else what a direct test says
         self._colder = DIRECT
-        if dew_only or cut or b.end == HIGHEST or (not self.closed and not b.complete and self.log_end > _HIGH):
+        if b.end == HIGHEST or (not self.closed and not b.complete and self.log_end > _HIGH):
             self._colder = _TWO_PHASE
         elif b.complete and b.critical is not None:
             self._colder = _LIQUID
@@ -118,6 +125,8 @@ class BoundaryCurve:
         if not self.inverse_slope < 0.0:
             raise OddBoundary
         self.ends_with_equation = self.coldest_first < 1.06 * coldest
+        # below its lowest pressure there may be no line, or another one
+        self._silent_below = self.ends_with_equation
         # a line that was lost on the way down does not tell what happens below
         self._lost_below = not b.reached and not self.ends_with_equation
         try:
@@ -126,10 +135,15 @@ class BoundaryCurve:
         except ValueError as error:
             raise OddBoundary from error
 
+    def continued_by_another(self) -> BoundaryCurve:
+        """Return the curve that says nothing below its lowest pressure, since another one does."""
+        other = copy(self)
+        other._silent_below, other._lost_below = True, False
+        return other
+
     def dew_temperature(self, log_pressure: Floats) -> Floats:
         """Return the dew temperature, K, shape (m,), -inf where there is none; for use on construction."""
-        _, up, _ = self.state_block(np.zeros_like(log_pressure), log_pressure)
-        return np.where(np.isnan(up), -np.inf, up)
+        return _dew_temperature(self, log_pressure)
 
     def state_float(self, t: float, lp: float) -> tuple[int, float, float]:
         """Return the region (or DIRECT) with the dew and the bubble temperature at this pressure, K.
@@ -144,7 +158,7 @@ class BoundaryCurve:
                 return DIRECT, math.nan, math.nan
             return self._far_side_float(t, lp), math.nan, math.nan
         if lp < self.log_first:
-            if self.ends_with_equation:
+            if self._silent_below:
                 return _GAS, math.nan, math.nan
             rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
             up = 1.0 / (rest if rest > _LEAST_INVERSE else _LEAST_INVERSE)
@@ -180,7 +194,7 @@ class BoundaryCurve:
         low = np.full(t.size, np.nan)
         before = lp < self.log_first
         if before.any():
-            if self.ends_with_equation:
+            if self._silent_below:
                 up = np.where(before, np.nan, up)
             else:
                 rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
@@ -233,7 +247,7 @@ class BoundaryCurve:
         u = math.sqrt(self.hottest - t)
         if t >= self.coldest_first:
             lower = exp(self.by_temperature(-u))
-        elif self.ends_with_equation:
+        elif self._silent_below:
             return math.inf, False
         else:
             lower = exp((1.0 / t - self.inverse_first) / self.inverse_slope + self.log_first)
@@ -249,7 +263,7 @@ class BoundaryCurve:
         distance = np.full(t.size, math.inf)
         inside = np.zeros(t.size, dtype=bool)
         crossed = t < self.hottest
-        if self.ends_with_equation:
+        if self._silent_below:
             crossed &= t >= self.coldest_first
         rows = np.flatnonzero(crossed)
         if rows.size == 0:
@@ -286,15 +300,17 @@ class _Stretch(NamedTuple):
 
 
 class WaterCurve:
-    """The water dew line over a range of pressure. Immutable.
+    """The water dew line over a range of pressure, or any other line T(p). Immutable.
 
     :param log_pressure: ln p, rising, shape (n,)
     :param temperature: K, shape (n,)
+    :param slope: dT/d ln p, shape (n,), that of a spline where None
     """
 
-    def __init__(self, log_pressure: Floats, temperature: Floats) -> None:
+    def __init__(self, log_pressure: Floats, temperature: Floats, slope: Floats | None = None) -> None:
         self.low, self.high = float(log_pressure[0]), float(log_pressure[-1])
-        self.by_pressure = spline_table(log_pressure, temperature, _KELVIN)
+        slopes = spline_slopes(log_pressure, temperature) if slope is None else slope
+        self.by_pressure = _retabled(log_pressure, temperature, slopes, _KNOTS, _KELVIN)
         fine = np.linspace(self.low, self.high, _FINE * (log_pressure.size - 1) + 1)
         t = cast(Floats, self.by_pressure(fine))
         steps = np.diff(t)
@@ -349,3 +365,93 @@ class WaterCurve:
                 here = nearest.take(rows)
                 nearest[rows] = np.where(distance < here, distance, here)
         return nearest
+
+
+class BelowBranch(IntEnum):
+    """What is known below the lowest pressure of a branch."""
+
+    STRAIGHT = 0
+    """It goes on straight in ln p against 1/T."""
+
+    SILENT = 1
+    """Another line is the higher one, or the equation has ended."""
+
+    LOST = 2
+    """It could not be followed further."""
+
+
+class DewBranch:
+    """Part of a dew line, in the range of pressure where one liquid forms before others. Immutable.
+
+    Beyond its ends it says nothing: other curves do. What lies far below it is left to the direct test.
+
+    :param points: the points of the branch, at rising pressures
+    :param shift: added to their ln p
+    :param below: what is known below its lowest pressure
+    :param certain: the part of the dew temperature down to which two phases were proven
+    :param last: whether no other curve follows above, and nothing is known there
+    :param coldest: K, where the equation ends
+    :raises OddBoundary: for points that make no curve
+    """
+
+    def __init__(self, points: DewPoints, shift: float, below: BelowBranch, certain: float, last: bool, coldest: float) -> None:
+        try:
+            self.line = WaterCurve(points.log_pressure + shift, points.temperature, points.temperature_slope)
+        except ValueError as error:
+            raise OddBoundary from error
+        self.closed = not last
+        self.log_first, self.log_top = self.line.low, self.line.high
+        self.ends_with_equation = float(points.temperature[0]) < 1.06 * coldest
+        self.hottest = float(points.temperature.max())
+        self._first = float(self.line.by_pressure(self.line.low))
+        self._certain = certain
+        self._silent = below == BelowBranch.SILENT or self.ends_with_equation
+        self._lost = below == BelowBranch.LOST and not self._silent
+
+    def dew_temperature(self, log_pressure: Floats) -> Floats:
+        """Return the dew temperature, K, shape (m,), -inf where there is none; for use on construction."""
+        return _dew_temperature(self, log_pressure)
+
+    def state_float(self, t: float, lp: float) -> tuple[int, float, float]:
+        """Return the region (or DIRECT) with the dew temperature, K; see ``BoundaryCurve``."""
+        if lp > self.log_top:
+            return (_GAS if self.closed else DIRECT), math.nan, math.nan
+        if lp < self.log_first:
+            if self._silent:
+                return _GAS, math.nan, math.nan
+            if self._lost:
+                return (DIRECT if t <= self._first else _GAS), math.nan, math.nan
+        up = self.line.temperature_float(lp)
+        if t > up:
+            return _GAS, up, math.nan
+        return (_TWO_PHASE if t >= self._certain * up else DIRECT), up, math.nan
+
+    def state_block(self, t: Array, lp: Array) -> tuple[NDArray[np.int8], Array, Array]:
+        """Return the same for rows, each of shape (n,)."""
+        up = self.line.temperature_block(lp)
+        state = np.where(t > up, np.int8(_GAS), np.where(t >= self._certain * up, np.int8(_TWO_PHASE), np.int8(DIRECT)))
+        outside = lp > self.log_top
+        state[outside] = _GAS if self.closed else DIRECT
+        before = lp < self.log_first
+        if self._silent or self._lost:
+            state[before] = _GAS
+            if self._lost:
+                state[before & (t <= self._first)] = DIRECT
+            outside |= before
+        return state, np.where(outside, math.nan, up), np.full(t.size, math.nan)
+
+    def distance_float(self, t: float, p: float) -> tuple[float, bool]:
+        """Return how far the pressure is from the line at this temperature, Pa, inf for none; see ``BoundaryCurve``."""
+        return self.line.distance_float(t, p), False
+
+    def distance_block(self, t: Array, p: Array) -> tuple[Array, NDArray[np.bool_]]:
+        """Return the same for rows, each of shape (n,)."""
+        return self.line.distance_block(t, p), np.zeros(t.size, dtype=bool)
+
+
+Curve = BoundaryCurve | DewBranch
+
+
+def _dew_temperature(curve: Curve, log_pressure: Floats) -> Floats:
+    _, up, _ = curve.state_block(np.zeros_like(log_pressure), log_pressure)
+    return np.where(np.isnan(up), -np.inf, up)

@@ -21,6 +21,9 @@ from gasapi.engine.phase.energy import Floats, MixtureEnergy
 __all__ = ["IncipientPhase", "Points"]
 
 _STEPS = 30
+_STEPS_ALONG = 10
+"""Steps of a continuation that has to take shorter ones than more of these."""
+
 _LONGEST = np.array([2.0, 0.7, 0.15])
 """Longest step in kappa, s and theta."""
 
@@ -117,12 +120,13 @@ class IncipientPhase:
         log_pressure = self._log_r + unknown[:, k] + unknown[:, k + 1] + np.log(safe)
         return _Equations(residual, jacobian, log_pressure, gradient)
 
-    def solve(self, start: Floats, spec: int, value: Floats) -> Points:
+    def solve(self, start: Floats, spec: int, value: Floats, most_steps: int = _STEPS) -> Points:
         """Solve points, each with one quantity given.
 
         :param start: unknowns to start from, shape (m, k + 2)
         :param spec: number of the unknown that is given, or -1 for ln p
         :param value: its values, shape (m,)
+        :param most_steps: after how many steps a row counts as not converged
         :returns: points; a row that did not converge says so
         """
         x = start.copy()
@@ -133,7 +137,7 @@ class IncipientPhase:
         count = 0
         rows = np.arange(m)
         with np.errstate(all="ignore"):
-            for count in range(1, _STEPS + 1):  # noqa: B007
+            for count in range(1, most_steps + 1):  # noqa: B007
                 here = x[rows]
                 e = self._equations(here)
                 self._close(e, here, spec, value[rows])
@@ -170,7 +174,7 @@ class IncipientPhase:
         value = np.array([log_density])
         count, converged = 0, False
         with np.errstate(all="ignore"):
-            for count in range(1, _STEPS + 1):  # noqa: B007
+            for count in range(1, _STEPS_ALONG + 1):  # noqa: B007
                 e = self._equations(x)
                 self._close(e, x, spec, value)
                 right[:, :, 0] = e.residual

@@ -37,9 +37,10 @@ from gasapi.engine.elementary import Array, log
 from gasapi.engine.models.cubic import CubicMixture
 from gasapi.engine.models.gerg_2008 import GergSystem
 from gasapi.engine.models.gerg_2008_fugacity import GergEnergy
-from gasapi.engine.phase.boundary import NamedPoint, trace_boundary
+from gasapi.engine.phase.boundary import NamedPoint
 from gasapi.engine.phase.cubic_energy import CubicEnergy
-from gasapi.engine.phase.curves import DIRECT, BoundaryCurve, OddBoundary, WaterCurve
+from gasapi.engine.phase.curves import DIRECT, WaterCurve
+from gasapi.engine.phase.dry_boundary import NO_DEW_POINT, dry_boundary
 from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.flash import FlashResult, two_phase_flash
 from gasapi.engine.phase.mixture_verdict import (
@@ -163,7 +164,6 @@ class MixturePhase:
     :param fluid: the same equation at this composition
     :param fractions: mole fractions in the order of the energy's components, all above 0, [-]
     :param dry: the numbers of the components without water, where liquid water does not mix with the rest; else None
-    :param checked: whether the boundary is to be compared with direct tests, for components that associate
     :param cold_water: whether the equation has no trustworthy liquid water below 240 K
     :param uncertainty: of the dew temperature of the dry mixture, and of water
     """
@@ -174,7 +174,6 @@ class MixturePhase:
         fluid: Fluid,
         fractions: Sequence[float],
         dry: Sequence[int] | None = None,
-        checked: bool = False,
         cold_water: bool = False,
         uncertainty: tuple[DewUncertainty, DewUncertainty] = (UNSURE, UNSURE),
     ) -> None:
@@ -194,11 +193,13 @@ class MixturePhase:
         self._shift = shift
         self._hot = _HOT * float(rest.critical_temperatures.max())
         with np.errstate(all="ignore"):
-            self.boundary, self.end = trace_boundary(rest, traced, LOWEST_TEMPERATURE)
-            self._curves, known = self._make_curves(rest, traced, checked)
+            found = dry_boundary(rest, traced, shift, LOWEST_TEMPERATURE)
+        self._curves, self.boundary, self.end, self._cold, self._doubts = found
+        known = bool(self._curves)
         self._never = not known and self._never_condenses(rest, traced)
         self._odd = not known and not self._never
         self._closed = bool(self._curves) and all(c.closed for c in self._curves)
+        self._lowest_curve = min(self._curves, key=lambda c: c.log_first, default=None)
         self._log_top = max((c.log_top for c in self._curves), default=-math.inf)
         self._set_critical(rest, traced)
         self._water_gas: WaterCurve | None = None
@@ -210,57 +211,9 @@ class MixturePhase:
 
     # construction
 
-    def _make_curves(self, rest: MixtureEnergy, z: Floats, checked: bool) -> tuple[tuple[BoundaryCurve, ...], bool]:
-        """Return the curves of the dry mixture, and whether they tell the phase."""
-        b = self.boundary
-        if b is None:
-            return (), False
-        try:
-            curve = BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE)
-            # a line that has no critical point may not be the only one
-            doubtful = (
-                checked or (curve.closed and b.critical is None) or (not curve.closed and b.end.startswith("the boundary"))
-            )
-            test = StabilityTest(rest, z, None)
-            if not doubtful or self._agrees((curve,), test):
-                return (curve,), True
-            if not curve.closed:
-                curve = BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, cut=True)
-                return ((curve,), True) if self._agrees((curve,), test) else ((), False)
-            curves = (BoundaryCurve(b, self._shift, LOWEST_TEMPERATURE, dew_only=True), *self._lean_curve(rest, z))
-            return (curves, True) if len(curves) > 1 and self._agrees(curves, test) else ((), False)
-        except OddBoundary:
-            return (), False
-
-    def _lean_curve(self, rest: MixtureEnergy, z: Floats) -> tuple[BoundaryCurve, ...]:
-        """Return the curve of the bulk of the gas, without scarce heavy components that fall out by themselves."""
-        mean = float((z * rest.critical_temperatures).sum())
-        kept = [i for i in range(z.size) if z[i] > _SCARCE or rest.critical_temperatures[i] < _HEAVIER * mean]
-        if len(kept) == z.size or not kept:
-            return ()
-        lean, fractions, shift = _share(rest, z, kept)
-        boundary, _ = trace_boundary(lean, fractions, LOWEST_TEMPERATURE)
-        return () if boundary is None else (BoundaryCurve(boundary, self._shift + shift, LOWEST_TEMPERATURE),)
-
-    def _agrees(self, curves: tuple[BoundaryCurve, ...], test: StabilityTest) -> bool:
-        """Return whether states of the dry mixture just outside all curves are stable by the direct test."""
-        last = curves[-1]
-        states = []
-        if all(c.closed for c in curves):
-            # beyond the top first, since a line that is not the only one shows it there
-            beyond = max(c.log_top for c in curves) + 0.03
-            t = last.by_pressure(0.0)
-            states = [(t, beyond), (0.5 * (t + last.hottest), beyond), (0.97 * t, beyond)]
-        for part in (0.97, 0.75):
-            lp = last.log_first + part * (min(last.log_top, _LOG_CHECKED) - last.log_first)
-            t = max(float(c.dew_temperature(np.array([lp]))[0]) for c in curves)
-            states.append((t + 1.0, lp))
-        states = states[: len(states) - 1] if len(curves) > 1 else states
-        return all(test.at(t, math.exp(lp - self._shift)).verdict == Stability.STABLE for t, lp in states)
-
     def _never_condenses(self, rest: MixtureEnergy, z: Floats) -> bool:
         """Return whether the dry gas is stable at the lowest temperature of the equation at every pressure tried."""
-        if self.boundary is not None:
+        if self.end != NO_DEW_POINT:
             return False
         if float(rest.critical_temperatures.max()) < LOWEST_TEMPERATURE:
             return True
@@ -330,17 +283,20 @@ class MixturePhase:
         region, up, low = _GAS, math.nan, math.nan
         if self._odd:
             region = _GAS if t > self._hot and lp < _LOG_HOT else DIRECT
-        elif self._never:
-            region = _GAS if t >= LOWEST_TEMPERATURE else _UNKNOWN
-        else:
+        elif not self._never:
             for curve in self._curves:
                 state, here, bubble = curve.state_float(t, lp)
                 if not here <= up:
                     up = here if here == here else up
                     low = bubble if here == here else low
                 region = _worse(region, state)
-            if region == _GAS and ((t < self._critical_temperature and lp > self._log_top) or t < LOWEST_TEMPERATURE):
-                region = _LIQUID if lp > self._log_top else _UNKNOWN
+            if lp > self._log_top and region == _GAS and t < self._critical_temperature:
+                region = _LIQUID
+            if t < self._cold and (region == _LIQUID or (region == _GAS and lp > self._log_top)):
+                region = DIRECT
+            for low, high, warm in self._doubts:
+                if low <= lp <= high and t < warm and region != _TWO_PHASE:
+                    region = DIRECT
         water = math.nan
         if self._wet:
             water, unsure = self._water_float(lp, region == _LIQUID)
@@ -348,6 +304,8 @@ class MixturePhase:
                 region = _TWO_PHASE
             elif unsure and region != _TWO_PHASE and not (t > self._hot and lp < _LOG_HOT and t > _WATER_CRITICAL):
                 region = DIRECT
+        if t < LOWEST_TEMPERATURE:
+            region = _UNKNOWN
         return region, up, low, water
 
     def _water_float(self, lp: float, liquid: bool) -> tuple[float, bool]:
@@ -445,8 +403,8 @@ class MixturePhase:
 
     def _flags_float(self, t: float, p: float, lp: float, up: float, water: float) -> int:
         flags = 0
-        if self._curves:
-            first = self._curves[0]
+        first = self._lowest_curve
+        if first is not None:
             if lp > self._log_top and self._closed:
                 flags = 8
             elif lp < first.log_first:
@@ -474,9 +432,7 @@ class MixturePhase:
         up, low = np.full(n, math.nan), np.full(n, math.nan)
         if self._odd:
             region[~((t > self._hot) & (lp < _LOG_HOT))] = DIRECT
-        elif self._never:
-            region[~(t >= LOWEST_TEMPERATURE)] = _UNKNOWN
-        else:
+        elif not self._never:
             for number, curve in enumerate(self._curves):
                 state, here, bubble = curve.state_block(t, lp)
                 if number == 0:
@@ -486,10 +442,10 @@ class MixturePhase:
                 up, low = np.where(higher, here, up), np.where(higher, bubble, low)
                 region = _RANKED.take(np.maximum(_RANK.take(region), _RANK.take(state)))
             beyond = lp > self._log_top
-            gas = region == _GAS
-            cold = gas & (t < LOWEST_TEMPERATURE)
-            region[cold] = _UNKNOWN
-            region[gas & beyond & ((t < self._critical_temperature) | cold)] = _LIQUID
+            region[beyond & (region == _GAS) & (t < self._critical_temperature)] = _LIQUID
+            region[(t < self._cold) & ((region == _LIQUID) | (beyond & (region == _GAS)))] = DIRECT
+            for first, last, warm in self._doubts:
+                region[(first <= lp) & (lp <= last) & (t < warm) & (region != _TWO_PHASE)] = DIRECT
         water = np.full(n, math.nan)
         if self._wet:
             water, unsure = self._water_block(lp, region == _LIQUID)
@@ -498,6 +454,7 @@ class MixturePhase:
             lost &= ~((t > self._hot) & (lp < _LOG_HOT) & (t > _WATER_CRITICAL))
             region[wet] = _TWO_PHASE
             region[lost] = DIRECT
+        region[t < LOWEST_TEMPERATURE] = _UNKNOWN
         return region, up, low, water
 
     def _water_block(self, lp: Array, liquid: NDArray[np.bool_]) -> tuple[Array, NDArray[np.bool_]]:
@@ -644,8 +601,8 @@ class MixturePhase:
 
     def _flags_block(self, t: Array, p: Array, lp: Array, up: Array, water: Array) -> NDArray[np.int16]:
         flags = np.zeros(t.size, dtype=np.int16)
-        if self._curves:
-            first = self._curves[0]
+        first = self._lowest_curve
+        if first is not None:
             flags[lp < first.log_first] = 16 if first.ends_with_equation else 64
             if self._closed:
                 flags[lp > self._log_top] = 8
@@ -786,7 +743,6 @@ def mixture_phase(system: GergSystem | CubicMixture, fractions: Sequence[float])
         fluid,
         z,
         dry if 0 < len(dry) < len(names) and not miscible else None,
-        checked=miscible,
         cold_water=isinstance(system, GergSystem),
         uncertainty=(DewUncertainty(kelvin, 0.0, kelvin, "estimate"), water),
     )

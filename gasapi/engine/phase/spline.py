@@ -5,6 +5,8 @@ Own code since scipy.interpolate takes half a second to import, which every star
 
 from __future__ import annotations
 
+from typing import cast
+
 import numpy as np
 
 from gasapi.engine.phase.energy import Floats
@@ -36,8 +38,7 @@ def spline_slopes(x: Floats, y: Floats) -> Floats:
         matrix[row, row] = h[far]
         matrix[row, other] = both
         right[row] = ((h[near] + 2.0 * both) * h[far] * chord[near] + h[near] * h[near] * chord[far]) / both
-    slopes: Floats = np.linalg.solve(matrix, right)
-    return slopes
+    return cast(Floats, np.linalg.solve(matrix, right))
 
 
 def monotone_slopes(x: Floats, y: Floats) -> Floats:
