@@ -389,7 +389,7 @@ def main() -> int:
     for pid, held in before.items():
         now = after.get(pid, 0)
         growth = f"{now / 2**20:.1f} at the end ({now / held - 1:+.1%})"
-        print(f"worker {pid}: {held / 2**20:.1f} MiB of its own with full caches, {growth}")
+        print(f"worker {pid}: {held / 2**20:.1f} MiB with full caches, {growth}")
     if options.floor:
         empty = floor(options.workers, min(options.seconds, 10.0), options.connections)
         print(f"empty application {empty:.0f} a second, ratio {rate / empty:.2f}")

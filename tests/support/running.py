@@ -57,9 +57,9 @@ class Running:
 
 
 def resident_bytes(pid: int) -> int:
-    """Return the memory that a process alone holds, without what it shares with the process that it was forked from."""
-    lines = Path(f"/proc/{pid}/smaps_rollup").read_text().splitlines()
-    return 1024 * sum(int(line.split()[1]) for line in lines if line.startswith(("Private_Clean", "Private_Dirty")))
+    """Return the resident memory of a process."""
+    (line,) = [line for line in Path(f"/proc/{pid}/status").read_text().splitlines() if line.startswith("VmRSS:")]
+    return 1024 * int(line.split()[1])
 
 
 @contextmanager
