@@ -126,7 +126,7 @@ def test_a_site_file_is_heeded(run, tmp_path, monkeypatch):
     site = tmp_path / "site.toml"
     site.write_text(
         '[site]\nambient_pressure = 95000\n[gases.works-gas]\nname = "Works gas"\n'
-        'fractions = { methane = 0.9, nitrogen = 0.1 }\n'
+        "fractions = { methane = 0.9, nitrogen = 0.1 }\n"
     )
     monkeypatch.setenv("GASAPI_SITE_FILE", str(site))
     code, out, _ = run("state", "works-gas", "-p", "1", "barg", "-t", "300", "--json")
