@@ -16,9 +16,10 @@ from gasapi.engine.phase.energy import Floats
 from gasapi.engine.phase.incipient import IncipientPhase, Points
 from gasapi.engine.phase.spline import hermite, hermite_slope
 
-__all__ = ["HIGHEST", "Boundary", "NamedPoint", "position_of", "trace_boundary"]
+__all__ = ["HIGHEST", "LOST", "Boundary", "NamedPoint", "position_of", "trace_boundary"]
 
 _LOWEST_PRESSURE: Final = 1e3
+LOST: Final = "the boundary could not be followed further"
 HIGHEST: Final = "the highest pressure was reached"
 
 _HIGHEST_PRESSURE: Final = 1e8
@@ -173,7 +174,7 @@ def _follow(system: IncipientPhase, first: Points, scale: float, lowest_temperat
         if not good:
             step *= 0.5
             if step < _SHORTEST_STEP:
-                return trace, False, "the boundary could not be followed further", reached
+                return trace, False, LOST, reached
             continue
         trace.add(points)
         log_p = trace.log_pressure[-1]

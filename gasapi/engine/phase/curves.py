@@ -74,11 +74,59 @@ def _falling(values: Floats) -> int:
     return values.size if bool(steps.all()) else int(steps.argmin()) + 1
 
 
+class _Stretch(NamedTuple):
+    """A rising or falling part of a line: ln p as a function of T between two temperatures."""
+
+    low: float
+    high: float
+    log_pressure: CubicTable
+
+
+def _stretches(t: Floats, lp: Floats) -> tuple[_Stretch, ...]:
+    """Return the rising and falling parts of a line given by many points."""
+    steps = np.diff(t)
+    turns = [0, *(np.flatnonzero(steps[1:] * steps[:-1] < 0.0) + 1).tolist(), t.size - 1]
+    found = []
+    for a, z in pairwise(turns):
+        if z - a < 3 or not bool((steps[a:z] != 0.0).all()):
+            continue
+        ts, lps = t[a : z + 1], lp[a : z + 1]
+        if ts[-1] < ts[0]:
+            ts, lps = ts[::-1], lps[::-1]
+        table = _retabled(ts, lps, monotone_slopes(ts, lps), _STRETCH_KNOTS, _LOG)
+        found.append(_Stretch(float(ts[0]), float(ts[-1]), table))
+    return tuple(found)
+
+
+def _nearest_float(stretches: tuple[_Stretch, ...], t: float, p: float) -> float:
+    """Return how far the pressure is from the nearest point of a line at this temperature, Pa, inf for none."""
+    nearest = math.inf
+    for stretch in stretches:
+        if stretch.low <= t <= stretch.high:
+            distance = p - exp(stretch.log_pressure(t))
+            distance = distance if distance > 0.0 else -distance
+            nearest = distance if distance < nearest else nearest
+    return nearest
+
+
+def _nearest_block(stretches: tuple[_Stretch, ...], t: Array, p: Array) -> Array:
+    """Return the same for rows, shape (n,)."""
+    nearest = np.full(t.size, math.inf)
+    for stretch in stretches:
+        rows = np.flatnonzero((t >= stretch.low) & (t <= stretch.high))
+        if rows.size:
+            distance = np.abs(p.take(rows) - exp(stretch.log_pressure(t.take(rows))))
+            here = nearest.take(rows)
+            nearest[rows] = np.where(distance < here, distance, here)
+    return nearest
+
+
 class BoundaryCurve:
     """Dew and bubble line of a mixture. Immutable.
 
     T(p) is one smooth function of w = -sqrt(ln p_max - ln p) on the dew side and +sqrt on the other; ln p(T) one of
-    u = -+sqrt(T_max - T). Below its lowest pressure the dew line goes on straight in ln p against 1/T.
+    u = -+sqrt(T_max - T). Below its lowest pressure the dew line goes on straight in ln p against 1/T. A line whose temperature
+    rises, falls and rises again, as that of a lean gas with traces of heavier ones does, is used as T(p) alone.
 
     :param b: the traced boundary
     :param shift: added to its ln p: the share of the pressure that the traced mixture has
@@ -129,11 +177,24 @@ class BoundaryCurve:
         self._silent_below = self.ends_with_equation
         # a line that was lost on the way down does not tell what happens below
         self._lost_below = not b.reached and not self.ends_with_equation
+        self._wavy = fall_hot > 1 and bool((t[hot + fall_hot :] > self.coldest_top).any())
+        self._lines: tuple[_Stretch, ...] = ()
         try:
             self.by_pressure = spline_table(w, t[: top + fall], _KELVIN)
+            if self._wavy:
+                self._straighten(w, t)
             self.by_temperature = spline_table(u, lp[: hot + fall_hot], _LOG)
         except ValueError as error:
             raise OddBoundary from error
+
+    def _straighten(self, w: Floats, t: Floats) -> None:
+        """Prepare for a line whose T(p) is the only function."""
+        if not self.closed or w[-1] <= 0.0:
+            raise OddBoundary
+        self.hottest = round(float(t.max()), 7)
+        self._coldest_bubble = float(t[w.size - 1])
+        fine = np.linspace(w[0], w[-1], _FINE * w.size + 1)
+        self._lines = _stretches(cast(Floats, self.by_pressure(fine)), self.log_top - fine * fine)
 
     def continued_by_another(self) -> BoundaryCurve:
         """Return the curve that says nothing below its lowest pressure, since another one does."""
@@ -169,6 +230,11 @@ class BoundaryCurve:
         up = self.by_pressure(-w)
         if t > up:
             return _GAS, up, math.nan
+        if self._wavy:
+            if lp < self.log_last:
+                return (_TWO_PHASE if t >= self._coldest_bubble else DIRECT), up, math.nan
+            low = self.by_pressure(w)
+            return (_TWO_PHASE if t >= low else _LIQUID), up, low
         state = self._far_side_float(t, lp)
         low = self.by_pressure(w) if lp >= self.log_last else math.nan
         if state == _TWO_PHASE:
@@ -179,7 +245,7 @@ class BoundaryCurve:
 
     def _far_side_float(self, t: float, lp: float) -> int:
         """Return two-phase below the line of the far side, gas (or whatever one phase is called there) above it."""
-        if t >= self.hottest:
+        if t >= self.hottest or self._wavy:
             return _GAS
         if t >= self.coldest_top:
             return _TWO_PHASE if lp < self.by_temperature(math.sqrt(self.hottest - t)) else _GAS
@@ -210,7 +276,15 @@ class BoundaryCurve:
         else:
             state[before & (t <= up)] = _TWO_PHASE
         rows = np.flatnonzero(~before & ((above & self.closed) | (t <= up)))
-        if rows.size:
+        if self._wavy:
+            rows = rows[~above.take(rows)]
+            here, lp_here = t.take(rows), lp.take(rows)
+            bubble = np.where(lp_here < self.log_last, math.nan, self.by_pressure(w.take(rows)))
+            state[rows] = np.where(here >= bubble, _TWO_PHASE, _LIQUID)
+            beyond = np.flatnonzero(lp_here < self.log_last)
+            state[rows[beyond]] = np.where(here.take(beyond) >= self._coldest_bubble, _TWO_PHASE, DIRECT)
+            low[rows] = bubble
+        elif rows.size:
             here, lp_here, within = t.take(rows), lp.take(rows), ~above.take(rows)
             far = self._far_side_block(here, lp_here)
             known = np.flatnonzero(within & (lp_here >= self.log_last))
@@ -242,6 +316,8 @@ class BoundaryCurve:
         :param t: temperature, K
         :param p: pressure, Pa
         """
+        if self._wavy:
+            return _nearest_float(self._lines, t, p), False
         if not t < self.hottest:
             return math.inf, False
         u = math.sqrt(self.hottest - t)
@@ -260,6 +336,8 @@ class BoundaryCurve:
 
     def distance_block(self, t: Array, p: Array) -> tuple[Array, NDArray[np.bool_]]:
         """Return the same for rows, each of shape (n,)."""
+        if self._wavy:
+            return _nearest_block(self._lines, t, p), np.zeros(t.size, dtype=bool)
         distance = np.full(t.size, math.inf)
         inside = np.zeros(t.size, dtype=bool)
         crossed = t < self.hottest
@@ -291,14 +369,6 @@ def _node(b: Boundary, point: NamedPoint | None, values: Floats) -> int:
     return int(np.searchsorted(b.position, position_of(b, point) - 1e-9))
 
 
-class _Stretch(NamedTuple):
-    """A rising or falling part of a water line: ln p as a function of T between two temperatures."""
-
-    low: float
-    high: float
-    log_pressure: CubicTable
-
-
 class WaterCurve:
     """The water dew line over a range of pressure, or any other line T(p). Immutable.
 
@@ -313,18 +383,7 @@ class WaterCurve:
         self.by_pressure = _retabled(log_pressure, temperature, slopes, _KNOTS, _KELVIN)
         fine = np.linspace(self.low, self.high, _FINE * (log_pressure.size - 1) + 1)
         t = cast(Floats, self.by_pressure(fine))
-        steps = np.diff(t)
-        turns = [0, *(np.flatnonzero(steps[1:] * steps[:-1] < 0.0) + 1).tolist(), t.size - 1]
-        stretches = []
-        for a, z in pairwise(turns):
-            if z - a < 3 or not bool((steps[a:z] != 0.0).all()):
-                continue
-            ts, lps = t[a : z + 1], fine[a : z + 1]
-            if ts[-1] < ts[0]:
-                ts, lps = ts[::-1], lps[::-1]
-            table = _retabled(ts, lps, monotone_slopes(ts, lps), _STRETCH_KNOTS, _LOG)
-            stretches.append(_Stretch(float(ts[0]), float(ts[-1]), table))
-        self._stretches = tuple(stretches)
+        self._stretches = _stretches(t, fine)
         first = self.by_pressure(self.low)
         self._inverse_first = 1.0 / first
         self._inverse_slope = -(self.by_pressure(self.low + 0.01) - first) / (0.01 * first * first)
@@ -347,24 +406,11 @@ class WaterCurve:
 
     def distance_float(self, t: float, p: float) -> float:
         """Return how far the pressure is from the nearest point of the line at this temperature, Pa, inf for none."""
-        nearest = math.inf
-        for stretch in self._stretches:
-            if stretch.low <= t <= stretch.high:
-                distance = p - exp(stretch.log_pressure(t))
-                distance = distance if distance > 0.0 else -distance
-                nearest = distance if distance < nearest else nearest
-        return nearest
+        return _nearest_float(self._stretches, t, p)
 
     def distance_block(self, t: Array, p: Array) -> Array:
         """Return the same for rows, shape (n,)."""
-        nearest = np.full(t.size, math.inf)
-        for stretch in self._stretches:
-            rows = np.flatnonzero((t >= stretch.low) & (t <= stretch.high))
-            if rows.size:
-                distance = np.abs(p.take(rows) - exp(stretch.log_pressure(t.take(rows))))
-                here = nearest.take(rows)
-                nearest[rows] = np.where(distance < here, distance, here)
-        return nearest
+        return _nearest_block(self._stretches, t, p)
 
 
 class BelowBranch(IntEnum):

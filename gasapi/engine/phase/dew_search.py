@@ -121,12 +121,15 @@ def _lean(energy: MixtureEnergy, fractions: Floats) -> Floats:
     return np.where((fractions > _SCARCE) | (energy.critical_temperatures < _HEAVIER * mean), fractions, 0.0)
 
 
-def first_liquids(energy: MixtureEnergy, fractions: Floats, log_pressure: Floats) -> list[_Guesses]:
+def first_liquids(
+    energy: MixtureEnergy, fractions: Floats, log_pressure: Floats, alone_most: int = _BY_THEMSELVES
+) -> list[_Guesses]:
     """Return the liquids that may form first, with where ideal ones would.
 
     :param energy: the equation of state
     :param fractions: mole fractions of the feed, shape (n,), all above 0, [-]
     :param log_pressure: ln p, shape (m,)
+    :param alone_most: how many nearly pure ones are among them
     """
     n = fractions.size
     found = [_ideal_liquids(energy, fractions, log_pressure)]
@@ -138,7 +141,7 @@ def first_liquids(energy: MixtureEnergy, fractions: Floats, log_pressure: Floats
     alone = energy.critical_temperatures / (1.0 - np.minimum(partial / growth, -0.02))
     order = np.argsort(-alone, axis=1, kind="stable")
     rows = np.arange(log_pressure.size)
-    for place in range(min(_BY_THEMSELVES, n)):
+    for place in range(min(alone_most, n)):
         chosen = order[:, place]
         x = np.broadcast_to((1.0 - _PURE) * fractions, (rows.size, n)).copy()
         x[rows, chosen] += _PURE

@@ -10,11 +10,12 @@ curves are given up. Everything depends on the composition alone.
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from typing import Final, NamedTuple
 
 import numpy as np
 
-from gasapi.engine.phase.boundary import Boundary, trace_boundary
+from gasapi.engine.phase.boundary import LOST, Boundary, trace_boundary
 from gasapi.engine.phase.curves import BelowBranch, BoundaryCurve, Curve, DewBranch, OddBoundary
 from gasapi.engine.phase.dew_search import (
     DewPoints,
@@ -57,6 +58,7 @@ _MOST_DOUBTS: Final = 6
 _RISES: Final = (10.0, 30.0, 80.0)
 _CERTAIN: Final = (0.98, 0.94, 0.88, 0.8, 0.7)
 _COLD_STATES: Final = 8
+_COLD_ALONE: Final = 6
 _COLD_LOG_PRESSURE: Final = math.log(3e7)
 
 
@@ -70,14 +72,16 @@ class Doubt(NamedTuple):
 
 class DryBoundary(NamedTuple):
     """``curves``, none where the boundary is not known; the traced ``boundary`` of the upper one and why its trace ended;
-    ``cold`` is the temperature, K, below which a dense single phase is not to be believed, ``doubts`` where others are not.
+    ``doubts`` are where single phases are not to be believed. So are dense ones below the temperature, K, that ``cold`` finds;
+    it is at most ``coldest_sure``.
     """
 
     curves: tuple[Curve, ...]
     boundary: Boundary | None
     end: str
-    cold: float
-    doubts: tuple[Doubt, ...]
+    doubts: tuple[Doubt, ...] = ()
+    coldest_sure: float = -math.inf
+    cold: Callable[[], float] = lambda: -math.inf
 
 
 def dry_boundary(energy: MixtureEnergy, fractions: Floats, shift: float, lowest_temperature: float) -> DryBoundary:
@@ -113,7 +117,7 @@ class _Search:
         """Return the boundary."""
         points = search_dew_points(self._system, _NODES, self._lowest)
         if points.temperature.size == 0:
-            return DryBoundary((), None, NO_DEW_POINT, -math.inf, ())
+            return DryBoundary((), None, NO_DEW_POINT)
         self._trace(_highest(points))
         doubts: tuple[Doubt, ...] | None = None
         for _ in range(_ROUNDS):
@@ -125,8 +129,12 @@ class _Search:
                 break
             points = joined(points, more)
         if doubts is None:
-            return DryBoundary((), self._boundary, self._end, -math.inf, ())
-        return DryBoundary(self._finished(), self._boundary, self._end, self._cold(), doubts)
+            return DryBoundary((), self._boundary, self._end)
+        curves, main = self._finished(), self._main
+        if main is None or not main.closed:
+            return DryBoundary(curves, self._boundary, self._end, doubts)
+        # most gases are never asked for as cold liquids
+        return DryBoundary(curves, self._boundary, self._end, doubts, float(main.by_pressure(0.0)), lambda: self._cold(main))
 
     def _curves(self) -> list[Curve]:
         return ([] if self._main is None else [self._main]) + self._branches
@@ -294,18 +302,19 @@ class _Search:
                 covered = branch.log_first
         return (main.continued_by_another() if covered < main.log_first else main, *self._branches)
 
-    def _cold(self) -> float:
+    def _cold(self, main: BoundaryCurve) -> float:
         """Return below which temperature the dense side splits once more, -inf where it was not found to."""
-        main = self._main
-        if main is None or not main.closed:
-            return -math.inf
         top = main.log_top - self._shift
         ladder = np.linspace(float(main.by_pressure(0.0)), self._lowest, _COLD_STATES + 1)
         pressures = np.array([top + 0.05, max(top + 0.5, _COLD_LOG_PRESSURE)])
-        found = screen(self._energy, self._z, np.tile(ladder[1:], 2), np.exp(np.repeat(pressures, _COLD_STATES)))
+        found = screen(self._energy, self._z, np.tile(ladder[1:], 2), np.exp(np.repeat(pressures, _COLD_STATES)), _COLD_ALONE)
         split = found.unstable.reshape(2, _COLD_STATES).any(axis=0)
         # up to the next state above the warmest that splits
-        return float(ladder[int(split.argmax())]) if split.any() else -math.inf
+        cold = float(ladder[int(split.argmax())]) if split.any() else -math.inf
+        if self._end == LOST and self._boundary is not None:
+            # a bubble line is often lost where a second liquid begins
+            cold = max(cold, _NEARLY_COLD * math.exp(self._boundary.log_temperature[-1]))
+        return min(cold, float(ladder[0]))
 
 
 def _lengthened(line: DewPoints) -> DewPoints:

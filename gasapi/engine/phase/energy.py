@@ -30,6 +30,8 @@ _THIN = (1e-7, 1e-4, 1e-3, 3e-3, 0.01, 0.02, 0.035, 0.055, 0.08, 0.11, 0.14, 0.1
 _WALK = np.concatenate([_THIN, np.linspace(0.3, 1.0, 18)])
 _STEPS = 60
 _DONE = 1e-13
+_FEW_STEPS = 4
+_ROUGHLY = 1e-6
 
 _ROWS = 16
 """Isotherms walked together: with more, arrays leave the processor's cache."""
@@ -69,6 +71,27 @@ class Isotherms(ABC):
     @abstractmethod
     def take(self, rows: NDArray[np.intp]) -> Isotherms:
         """Return some of the isotherms."""
+
+
+def _walked(isotherms: Isotherms, grid: Floats, target: Floats, branch: Branch) -> tuple[Floats, Floats]:
+    """Return by how much the pressure at each point is above its target, and the stiffness: as far as the walk goes.
+
+    Most walks end in the half where they begin. What lies beyond is marked as an end, which is never reached.
+    """
+    gas = branch == Branch.GAS
+    excess, stiffness = np.full(grid.shape, np.inf if gas else -np.inf), np.ones(grid.shape)
+    halves = (slice(0, len(_THIN)), slice(len(_THIN), grid.shape[1]))
+    rows = np.arange(grid.shape[0])
+    for half in halves if gas else halves[::-1]:
+        here = isotherms if rows.size == grid.shape[0] else isotherms.take(rows)
+        z, stiff = here.at(grid[rows, half])
+        over = grid[rows, half] * z - target[rows, None]
+        excess[rows, half], stiffness[rows, half] = over, stiff
+        ended = ((over >= 0.0) if gas else (over <= 0.0)) | (stiff <= 0.0)
+        rows = rows[~ended.any(axis=1)]
+        if rows.size == 0:
+            break
+    return excess, stiffness
 
 
 class MixtureEnergy(ABC):
@@ -143,8 +166,7 @@ class MixtureEnergy(ABC):
         grid = np.maximum(_WALK, 0.0)[None, :].repeat(temperature.size, axis=0)
         grid[:, 0] = np.minimum(0.5 * target, _WALK[0])
         isotherms = self.isotherms(temperature, fractions)
-        z, stiffness = isotherms.at(grid)
-        excess = grid * z - target[:, None]
+        excess, stiffness = _walked(isotherms, grid, target, branch)
         rows = np.arange(temperature.size)
         if branch == Branch.GAS:
             # the last point before the pressure is passed, or before the isotherm turns down
@@ -188,6 +210,36 @@ class MixtureEnergy(ABC):
             if not left.all():
                 rows, isotherms = rows[left], isotherms.take(np.flatnonzero(left))
         return x * packed, status
+
+    def log_fugacity_near(
+        self, temperature: Floats, pressure: Floats, fractions: Floats, density: Floats
+    ) -> tuple[Floats, Floats, NDArray[np.bool_]]:
+        """Return ln(phi_i), shape (m, n), and the density root beside a first guess, with whether there is one.
+
+        For trials on their way: the root is not walked to from outside, and may be a false one.
+
+        :param temperature: K, shape (m,)
+        :param pressure: Pa, shape (m,)
+        :param fractions: mole fractions, shape (m, n), [-]
+        :param density: first guess, mol/m3, shape (m,)
+        """
+        packed = self.close_packing(fractions)
+        target = pressure / (packed * self.gas_constant * temperature)
+        isotherms = self.isotherms(temperature, fractions)
+        x = density / packed
+        good = np.zeros(temperature.size, dtype=bool)
+        with np.errstate(all="ignore"):
+            for _ in range(_FEW_STEPS):
+                z, stiffness = (part[:, 0] for part in isotherms.at(x[:, None]))
+                step = (x * z - target) / stiffness
+                x = np.where((stiffness > 0.0) & (np.abs(step) < 0.3 * x), x - step, x)
+                good = (stiffness > 0.0) & (np.abs(step) < _ROUGHLY * x)
+                if good.all():
+                    break
+            rho = x * packed
+            d = self.derivatives(temperature, rho[:, None] * fractions)
+            log_z = np.log(np.where(d.compressibility > 0.0, d.compressibility, np.nan))
+        return d.potential - log_z[:, None], rho, good & np.isfinite(log_z)
 
     def log_fugacity(
         self, temperature: Floats, pressure: Floats, fractions: Floats, branch: Branch

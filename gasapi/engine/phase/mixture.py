@@ -28,6 +28,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from functools import cached_property
 from typing import Final
 
 import numpy as np
@@ -194,7 +195,8 @@ class MixturePhase:
         self._hot = _HOT * float(rest.critical_temperatures.max())
         with np.errstate(all="ignore"):
             found = dry_boundary(rest, traced, shift, LOWEST_TEMPERATURE)
-        self._curves, self.boundary, self.end, self._cold, self._doubts = found
+        self._curves, self.boundary, self.end, self._doubts = found.curves, found.boundary, found.end, found.doubts
+        self._coldest_sure, self._find_cold = found.coldest_sure, found.cold
         known = bool(self._curves)
         self._never = not known and self._never_condenses(rest, traced)
         self._odd = not known and not self._never
@@ -210,6 +212,15 @@ class MixturePhase:
                 self._solve_water(z, liquid)
 
     # construction
+
+    @cached_property
+    def _cold_liquid(self) -> float:
+        """Return the temperature below which a dense single phase is left to the direct test, found when it is first asked for.
+
+        It depends on the composition alone, so that two threads that find it at once find the same.
+        """
+        with np.errstate(all="ignore"):
+            return self._find_cold()
 
     def _never_condenses(self, rest: MixtureEnergy, z: Floats) -> bool:
         """Return whether the dry gas is stable at the lowest temperature of the equation at every pressure tried."""
@@ -292,7 +303,11 @@ class MixturePhase:
                 region = _worse(region, state)
             if lp > self._log_top and region == _GAS and t < self._critical_temperature:
                 region = _LIQUID
-            if t < self._cold and (region == _LIQUID or (region == _GAS and lp > self._log_top)):
+            if (
+                t < self._coldest_sure
+                and (region == _LIQUID or (region == _GAS and lp > self._log_top))
+                and t < self._cold_liquid
+            ):
                 region = DIRECT
             for low, high, warm in self._doubts:
                 if low <= lp <= high and t < warm and region != _TWO_PHASE:
@@ -443,7 +458,9 @@ class MixturePhase:
                 region = _RANKED.take(np.maximum(_RANK.take(region), _RANK.take(state)))
             beyond = lp > self._log_top
             region[beyond & (region == _GAS) & (t < self._critical_temperature)] = _LIQUID
-            region[(t < self._cold) & ((region == _LIQUID) | (beyond & (region == _GAS)))] = DIRECT
+            dense = (t < self._coldest_sure) & ((region == _LIQUID) | (beyond & (region == _GAS)))
+            if dense.any():
+                region[dense & (t < self._cold_liquid)] = DIRECT
             for first, last, warm in self._doubts:
                 region[(first <= lp) & (lp <= last) & (t < warm) & (region != _TWO_PHASE)] = DIRECT
         water = np.full(n, math.nan)

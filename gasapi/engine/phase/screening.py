@@ -21,6 +21,7 @@ __all__ = ["Screened", "screen"]
 _STEPS: Final = 5
 _PROOF: Final = 1e-6
 _TRIVIAL: Final = 1e-3
+_SAME_ROOT: Final = 1e-4
 
 
 class Screened(NamedTuple):
@@ -30,40 +31,50 @@ class Screened(NamedTuple):
     fractions: Floats
 
 
-def screen(energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressure: Floats) -> Screened:
+def screen(energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressure: Floats, alone_most: int = 3) -> Screened:
     """Look for a trial phase below the tangent plane of each state.
 
     :param energy: the equation of state
     :param fractions: mole fractions of the feed, shape (n,), all above 0, [-]
     :param temperature: K, shape (m,)
     :param pressure: Pa, shape (m,)
+    :param alone_most: how many nearly pure liquids are among the trials
     """
     m, n = temperature.size, fractions.size
     log_f = _feed(energy, fractions, temperature, pressure)
     found = np.zeros(m, dtype=bool)
     shown = np.broadcast_to(fractions, (m, n)).copy()
-    trials = [(Branch.LIQUID, guess.fractions) for guess in first_liquids(energy, fractions, np.log(pressure))]
+    trials = [(Branch.LIQUID, guess.fractions) for guess in first_liquids(energy, fractions, np.log(pressure), alone_most)]
     trials.append((Branch.GAS, ideal_gas_trials(energy, fractions, temperature)))
     for branch, start in trials:
         rows = np.flatnonzero(~found & np.isfinite(log_f[:, 0]))
         w = start[rows]
-        for _ in range(_STEPS):
+        rho = np.zeros(rows.size)
+        for count in range(_STEPS):
             if rows.size == 0:
                 break
-            log_phi, _, status = energy.log_fugacity(temperature[rows], pressure[rows], w, branch)
+            if count == 0:
+                log_phi, rho, status = energy.log_fugacity(temperature[rows], pressure[rows], w, branch)
+                known = status == Status.CONVERGED
+            else:
+                log_phi, rho, known = energy.log_fugacity_near(temperature[rows], pressure[rows], w, rho)
             held = w > 0.0
             excess = np.where(held, np.log(np.where(held, w, 1.0)) + log_phi - log_f[rows], 0.0)
-            known = status == Status.CONVERGED
             distance = np.where(known, (w * excess).sum(axis=1), np.inf)
-            below = distance < -_PROOF
-            found[rows[below]], shown[rows[below]] = True, w[below]
+            below = np.flatnonzero(distance < -_PROOF)
+            if below.size:
+                # only a root that is reached from outside is a phase
+                root, status = energy.density(temperature[rows[below]], pressure[rows[below]], w[below], branch)
+                with np.errstate(invalid="ignore"):
+                    real = below[(status == Status.CONVERGED) & (np.abs(root / rho[below] - 1.0) < _SAME_ROOT)]
+                found[rows[real]], shown[rows[real]] = True, w[real]
             new = np.where(held, np.exp(np.clip(log_f[rows] - log_phi, -600.0, 600.0)), 0.0)
             total = new.sum(axis=1)
-            going = known & ~below & np.isfinite(total) & (total > 0.0)
-            rows, w = rows[going], new[going] / total[going, None]
+            going = known & ~found[rows] & np.isfinite(total) & (total > 0.0)
+            rows, w, rho = rows[going], new[going] / total[going, None], rho[going]
             # what came back to the feed shows nothing more
             away = np.abs(w - fractions).max(axis=1) > _TRIVIAL
-            rows, w = rows[away], w[away]
+            rows, w, rho = rows[away], w[away], rho[away]
     return Screened(found, shown)
 
 
