@@ -12,6 +12,7 @@ import ipaddress
 import logging
 import os
 import shutil
+import signal
 import sys
 import tempfile
 from dataclasses import replace
@@ -154,6 +155,14 @@ def _serve(server_settings: dict[str, Any], holdings: Holdings, settings: Settin
     gunicorn.http.wsgi.SERVER = "gasapi"
     told: list[str] = []
 
+    def post_fork(server: Any, worker: Any) -> None:
+        # until a worker has handlers of its own, it would take a signal with those of its master, and stay
+        for number in (signal.SIGTERM, signal.SIGINT, signal.SIGQUIT):
+            signal.signal(number, signal.SIG_DFL)
+        while not server.SIG_QUEUE.empty():
+            if server.SIG_QUEUE.get_nowait() in (signal.SIGTERM, signal.SIGINT, signal.SIGQUIT):
+                os._exit(0)
+
     def child_exit(server: Any, worker: Any) -> None:
         mark_process_dead(worker.pid)
 
@@ -185,7 +194,13 @@ def _serve(server_settings: dict[str, Any], holdings: Holdings, settings: Settin
                 words = holdings.read_again()
                 told.extend([] if words is None else [words])
             self.started = True
-            hooks = {"child_exit": child_exit, "worker_exit": worker_exit, "on_exit": on_exit, "on_reload": on_reload}
+            hooks = {
+                "post_fork": post_fork,
+                "child_exit": child_exit,
+                "worker_exit": worker_exit,
+                "on_exit": on_exit,
+                "on_reload": on_reload,
+            }
             for name, value in {**server_settings, **hooks}.items():
                 self.cfg.set(name, value)
 
