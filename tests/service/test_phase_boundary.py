@@ -100,8 +100,8 @@ def test_an_open_boundary_is_uncertain(context):
 
 
 def test_a_boundary_below_the_range_of_the_equation_is_told_and_not_drawn(context):
-    """Lean biomethane: null, bad, and why."""
-    answer = boundary_of(context, "biomethane")
+    """Hydrogen with helium: null, bad, and why."""
+    answer = boundary_of(context, {"hydrogen": 0.5, "helium": 0.5})
     assert None is answer.boundary
     assert ("bad", ("outside_limits",)) == (answer.state.quality.level, answer.state.quality.reasons)
     assert ["boundary_not_traced"] == [warning.code for warning in answer.state.phase.warnings]
