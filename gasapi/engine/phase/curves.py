@@ -177,7 +177,7 @@ class BoundaryCurve:
         self._silent_below = self.ends_with_equation
         # a line that was lost on the way down does not tell what happens below
         self._lost_below = not b.reached and not self.ends_with_equation
-        self._wavy = fall_hot > 1 and bool((t[hot + fall_hot :] > self.coldest_top).any())
+        self._wavy = self.closed and fall_hot > 1 and bool((t[hot + fall_hot :] > self.coldest_top).any())
         self._lines: tuple[_Stretch, ...] = ()
         try:
             self.by_pressure = spline_table(w, t[: top + fall], _KELVIN)
@@ -189,7 +189,7 @@ class BoundaryCurve:
 
     def _straighten(self, w: Floats, t: Floats) -> None:
         """Prepare for a line whose T(p) is the only function."""
-        if not self.closed or w[-1] <= 0.0:
+        if w[-1] <= 0.0:
             raise OddBoundary
         self.hottest = round(float(t.max()), 7)
         self._coldest_bubble = float(t[w.size - 1])

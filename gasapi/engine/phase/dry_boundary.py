@@ -28,6 +28,7 @@ from gasapi.engine.phase.dew_search import (
 )
 from gasapi.engine.phase.energy import Floats, MixtureEnergy
 from gasapi.engine.phase.incipient import IncipientPhase
+from gasapi.engine.phase.region import Region
 from gasapi.engine.phase.screening import screen
 
 __all__ = ["NO_DEW_POINT", "Doubt", "DryBoundary", "dry_boundary"]
@@ -59,7 +60,11 @@ _RISES: Final = (10.0, 30.0, 80.0)
 _CERTAIN: Final = (0.98, 0.94, 0.88, 0.8, 0.7)
 _COLD_STATES: Final = 8
 _COLD_ALONE: Final = 6
+_MARGIN: Final = 1.03
 _COLD_LOG_PRESSURE: Final = math.log(3e7)
+
+
+_TWO_PHASE: Final = int(Region.TWO_PHASE)
 
 
 class Doubt(NamedTuple):
@@ -112,6 +117,7 @@ class _Search:
         self._main: BoundaryCurve | None = None
         self._branches: list[Curve] = []
         self._end = NO_DEW_POINT
+        self._points = DewPoints(np.empty(0), np.empty(0), np.empty((0, 0)), np.empty((0, 0)))
 
     def run(self) -> DryBoundary:
         """Return the boundary."""
@@ -128,6 +134,7 @@ class _Search:
             if log_p.size == 0 or not bool((more.temperature > self._dew(more.log_pressure) + _ABOVE).any()):
                 break
             points = joined(points, more)
+        self._points = points
         if doubts is None:
             return DryBoundary((), self._boundary, self._end)
         curves, main = self._finished(), self._main
@@ -165,15 +172,17 @@ class _Search:
                 curve = BoundaryCurve(boundary, self._shift, self._lowest)
             except OddBoundary:
                 continue
-            dew = curve.dew_temperature(highest.log_pressure[start:] + self._shift)
-            if bool((dew > highest.temperature[start:] - _SAME_LINE).all()):
+            if bool((_ceiling(curve, highest.log_pressure + self._shift) > highest.temperature - _SAME_LINE)[start:].all()):
                 self._boundary, self._main = boundary, curve
                 return
 
     def _add_branches(self, points: DewPoints) -> bool:
         """Add branches until no dew point is above the curves; tell whether that was reached."""
         for _ in range(_BRANCHES):
-            above = np.flatnonzero(points.temperature > self._dew(points.log_pressure) + _ABOVE)
+            dew = self._dew(points.log_pressure)
+            if self._main is not None:
+                dew = np.maximum(dew, _ceiling(self._main, points.log_pressure + self._shift))
+            above = np.flatnonzero(points.temperature > dew + _ABOVE)
             if above.size == 0:
                 return True
             high = above[points.log_pressure[above] == points.log_pressure[above].max()]
@@ -311,10 +320,19 @@ class _Search:
         split = found.unstable.reshape(2, _COLD_STATES).any(axis=0)
         # up to the next state above the warmest that splits
         cold = float(ladder[int(split.argmax())]) if split.any() else -math.inf
+        for log_p, t in zip((self._points.log_pressure + self._shift).tolist(), self._points.temperature.tolist(), strict=True):
+            if log_p > main.log_top and main.state_float(t - _ABOVE, log_p)[0] != _TWO_PHASE:
+                cold = max(cold, _NEARLY_COLD * t)
         if self._end == LOST and self._boundary is not None:
             # a bubble line is often lost where a second liquid begins
             cold = max(cold, _NEARLY_COLD * math.exp(self._boundary.log_temperature[-1]))
-        return min(cold, float(ladder[0]))
+        return min(_MARGIN * cold, float(ladder[0]))
+
+
+def _ceiling(curve: BoundaryCurve, log_pressure: Floats) -> Floats:
+    """Return the dew temperature, and that of the cricondenbar above it: what is colder there is on the dense side."""
+    top = float(curve.by_pressure(0.0)) if curve.closed else -math.inf
+    return np.where(log_pressure > curve.log_top, top, curve.dew_temperature(log_pressure))
 
 
 def _lengthened(line: DewPoints) -> DewPoints:
