@@ -10,15 +10,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from gasapi.engine.elementary import Array
-from gasapi.engine.phase.mixture import DewKind, MixtureFlag, MixturePhase, MixtureVerdict
+from gasapi.engine.phase.mixture import DewKind, MixtureFlag, MixturePhase, MixtureVerdict, is_near
 from gasapi.engine.phase.region import Region
 from gasapi.service.answers import PhaseWarning
 from gasapi.service.prepared import Margins
 
 __all__ = ["MixtureJudge"]
 
-_GAS: Final = int(Region.GAS)
-_SUPERCRITICAL: Final = int(Region.SUPERCRITICAL)
 _UNKNOWN: Final = int(Region.UNKNOWN)
 
 # within these parts of the critical temperature and density an isotherm of a mixture is nearly flat
@@ -72,6 +70,9 @@ _WATER: Final = int(DewKind.WATER)
 _DEW_NAMES: Final = {int(DewKind.HYDROCARBON): "of the gas itself", int(DewKind.WATER): "of water"}
 
 
+_NEAR_BOUNDARY: Final = "There is no dew point at this pressure, but a little below it the mixture becomes two phases."
+
+
 class MixtureJudge:
     """The phase of one composition; see ``PhaseJudge``. The boundary is traced when it is first asked for.
 
@@ -101,16 +102,11 @@ class MixtureJudge:
     def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool, object]:
         """Return region and nearness to the dew point of one state."""
         verdict = self.phase.at(temperature, pressure)
-        warm = verdict.margin_temperature
-        near = warm is not None and warm < margin and (verdict.region == _GAS or verdict.region == _SUPERCRITICAL)
-        return verdict.region, near, verdict
+        return verdict.region, is_near(verdict, pressure, margin), verdict
 
     def survey_block(self, temperature: Array, pressure: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
         """Return regions and nearness of rows, each of shape (n,)."""
-        verdicts = self.phase.block(temperature, pressure)
-        one_phase = (verdicts.region == _GAS) | (verdicts.region == _SUPERCRITICAL)
-        # a missing margin is NaN, and not near
-        return verdicts.region, one_phase & (verdicts.margin_temperature < margin)
+        return self.phase.survey_block(temperature, pressure, margin)
 
     def refine_float(self, temperature: float, pressure: float, density: float, region: int) -> int:
         """Return the region as surveyed, which took the density at the critical isochore into account."""
@@ -158,4 +154,6 @@ class MixtureJudge:
                 warnings.insert(0, PhaseWarning("water_dew_point", text))
             else:
                 warnings.insert(0, PhaseWarning("gas_dew_point", text))
+        elif is_near(verdict, pressure, margin):
+            warnings.insert(0, PhaseWarning("near_dew_point", _NEAR_BOUNDARY))
         return Margins(dew, verdict.margin_temperature, verdict.margin_pressure, tuple(warnings))

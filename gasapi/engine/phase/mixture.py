@@ -70,6 +70,7 @@ __all__ = [
     "MixtureOutline",
     "MixturePhase",
     "MixtureVerdict",
+    "is_near",
     "mixture_phase",
 ]
 
@@ -111,7 +112,7 @@ _HYDRATE_NEAR: Final = 8.0
 _TRIPLE: Final = 273.16
 _NEAR_TEMPERATURE: Final = 0.02
 _NEAR_PRESSURE: Final = 0.1
-_CLOSE_PRESSURE: Final = 0.03
+_CLOSE_PER_KELVIN: Final = 0.006
 
 _LIGHT: Final = 460.0
 """K: critical temperatures of the butanes lie below, those of the pentanes at it or above."""
@@ -642,29 +643,45 @@ class MixturePhase:
     # what a series asks
 
     def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool]:
-        """Return the region of one state, and whether it is one phase close to where another appears.
-
-        Close is less than ``margin`` above the dew temperature; above the cricondenbar, where there is none, less than 3 % of
-        the pressure from the boundary (our choice: some kelvin for a natural gas).
+        """Return the region of one state, and whether it is one phase close to where another appears; see ``is_near``.
 
         :param temperature: K
         :param pressure: Pa
         :param margin: K
         """
-        v = self.at(temperature, pressure)
-        if v.region not in (_GAS, _SUPERCRITICAL):
-            return v.region, False
-        if v.margin_temperature is not None:
-            return v.region, v.margin_temperature < margin
-        return v.region, v.margin_pressure is not None and v.margin_pressure < _CLOSE_PRESSURE * pressure
+        verdict = self.at(temperature, pressure)
+        return verdict.region, is_near(verdict, pressure, margin)
 
     def survey_block(self, temperature: Array, pressure: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
         """Return the same for rows, each of shape (n,)."""
-        b = self.block(temperature, pressure)
-        with np.errstate(invalid="ignore"):
-            none = b.margin_temperature != b.margin_temperature
-            near = np.where(none, b.margin_pressure < _CLOSE_PRESSURE * pressure, b.margin_temperature < margin)
-        return b.region, near & ((b.region == _GAS) | (b.region == _SUPERCRITICAL))
+        parts = [
+            self._survey_rows(temperature[i : i + _BLOCK_ROWS], pressure[i : i + _BLOCK_ROWS], margin)
+            for i in range(0, temperature.size, _BLOCK_ROWS)
+        ]
+        if not parts:
+            return np.empty(0, dtype=np.int8), np.empty(0, dtype=bool)
+        return np.concatenate([region for region, _ in parts]), np.concatenate([near for _, near in parts])
+
+    def _survey_rows(self, t: Array, p: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
+        usable = (t > 0.0) & (p > 0.0) & (t < math.inf) & (p < math.inf)
+        every = bool(usable.all())
+        if not every:
+            t, p = np.where(usable, t, 300.0), np.where(usable, p, 1e5)
+        near = np.zeros(t.size, dtype=bool)
+        with np.errstate(all="ignore"):
+            region, up, _, water = self._survey_block(t, log(p))
+            if not every:
+                region[~usable] = _UNKNOWN
+            direct = self._finish_block(t, p, region)
+            single = (region == _GAS) | (region == _SUPERCRITICAL)
+            warm = t - (np.where((water == water) & ~((up == up) & ~(water >= up)), water, up) if self._wet else up)
+            near = single & (warm < margin)
+            rows = np.flatnonzero(single & (warm != warm) & ~direct)
+            if rows.size:
+                here, there = t.take(rows), p.take(rows)
+                gap = self._margin_pressure_block(here, there, region.take(rows), here < water.take(rows))
+                near[rows] = gap < _CLOSE_PER_KELVIN * margin * there
+        return region, near
 
     # other questions
 
@@ -709,6 +726,23 @@ class MixturePhase:
             b.complete,
             b.end,
         )
+
+
+def is_near(verdict: MixtureVerdict, pressure: float, margin: float) -> bool:
+    """Return whether a state is one phase close to where another appears.
+
+    Close is less than ``margin`` above the dew temperature; above the cricondenbar, where there is none, less than 0.6 % of the
+    pressure for each kelvin of the margin from the boundary (our choice: some kelvin for a natural gas).
+
+    :param verdict: on the state
+    :param pressure: Pa
+    :param margin: K
+    """
+    if verdict.region != _GAS and verdict.region != _SUPERCRITICAL:
+        return False
+    if verdict.margin_temperature is not None:
+        return verdict.margin_temperature < margin
+    return verdict.margin_pressure is not None and verdict.margin_pressure < _CLOSE_PER_KELVIN * margin * pressure
 
 
 def _leading(good: NDArray[np.bool_], temperature: Floats) -> int:
