@@ -31,7 +31,9 @@ class Screened(NamedTuple):
     fractions: Floats
 
 
-def screen(energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressure: Floats, alone_most: int = 3) -> Screened:
+def screen(
+    energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressure: Floats, alone_most: int = 3, steps: int = _STEPS
+) -> Screened:
     """Look for a trial phase below the tangent plane of each state.
 
     :param energy: the equation of state
@@ -39,6 +41,7 @@ def screen(energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressu
     :param temperature: K, shape (m,)
     :param pressure: Pa, shape (m,)
     :param alone_most: how many nearly pure liquids are among the trials
+    :param steps: substitutions from each trial
     """
     m, n = temperature.size, fractions.size
     log_f = _feed(energy, fractions, temperature, pressure)
@@ -50,7 +53,7 @@ def screen(energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressu
         rows = np.flatnonzero(~found & np.isfinite(log_f[:, 0]))
         w = start[rows]
         rho = np.zeros(rows.size)
-        for count in range(_STEPS):
+        for count in range(steps):
             if rows.size == 0:
                 break
             if count == 0:
