@@ -146,7 +146,7 @@ same "10001:10001" "$(docker inspect -f '{{.Config.User}}' app:ci)" "user of the
 [[ $(docker inspect -f '{{.Config.Healthcheck.Test}}' app:ci) == "[CMD "* ]] || fail "no HEALTHCHECK in exec form"
 left=$(docker run --rm --network none --user 0:0 app:ci sh -c '
   for tool in gcc cc g++ make curl; do command -v $tool; done
-  ls -d /build /wheels /tmp/* /root/.cache /opt/gasapi/bin/pip* /opt/gasapi/lib/*/site-packages/pip /opt/gasapi/lib/*/site-packages/setuptools
+  ls -d /build /wheels /tmp/* ~root/.cache /opt/gasapi/bin/pip* /opt/gasapi/lib/*/site-packages/pip /opt/gasapi/lib/*/site-packages/setuptools
   find / -xdev \( -name pyproject.toml -o -name "requirements*.txt" -o -name "*.whl" \) -not -path "*/site-packages/*" -not -path "/usr/*"
   ' 2>/dev/null) || true
 same "" "$left" "compilers, caches and source files in the image"
