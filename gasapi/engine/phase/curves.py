@@ -221,11 +221,11 @@ class BoundaryCurve:
         if lp < self.log_first:
             if self._silent_below:
                 return _GAS, math.nan, math.nan
-            if self._lost_below:
-                return (DIRECT if t <= self.coldest_first else _GAS), math.nan, math.nan
             rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
             up = 1.0 / (rest if rest > _LEAST_INVERSE else _LEAST_INVERSE)
-            return (_GAS if t > up else _TWO_PHASE), up, math.nan
+            if t > up:
+                return (DIRECT if self._lost_below and t <= self.coldest_first else _GAS), up, math.nan
+            return (DIRECT if self._lost_below else _TWO_PHASE), up, math.nan
         w = math.sqrt(self.log_top - lp)
         up = self.by_pressure(-w)
         if t > up:
@@ -260,7 +260,7 @@ class BoundaryCurve:
         low = np.full(t.size, np.nan)
         before = lp < self.log_first
         if before.any():
-            if self._silent_below or self._lost_below:
+            if self._silent_below:
                 up = np.where(before, np.nan, up)
             else:
                 rest = self.inverse_first + self.inverse_slope * (lp - self.log_first)
@@ -323,7 +323,7 @@ class BoundaryCurve:
         u = math.sqrt(self.hottest - t)
         if t >= self.coldest_first:
             lower = exp(self.by_temperature(-u))
-        elif self._silent_below or self._lost_below:
+        elif self._silent_below:
             return math.inf, False
         else:
             lower = exp((1.0 / t - self.inverse_first) / self.inverse_slope + self.log_first)
@@ -341,7 +341,7 @@ class BoundaryCurve:
         distance = np.full(t.size, math.inf)
         inside = np.zeros(t.size, dtype=bool)
         crossed = t < self.hottest
-        if self._silent_below or self._lost_below:
+        if self._silent_below:
             crossed &= t >= self.coldest_first
         rows = np.flatnonzero(crossed)
         if rows.size == 0:

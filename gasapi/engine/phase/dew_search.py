@@ -26,7 +26,6 @@ __all__ = [
     "ideal_gas_trials",
     "is_one_line",
     "joined",
-    "leap",
     "refine_dew_line",
     "search_dew_points",
     "solve_dew_points",
@@ -272,19 +271,8 @@ def _is_next(line: DewPoints, found: DewPoints, log_pressure: float) -> bool:
     return bool(np.abs(leap).max() < _LEAP)
 
 
-def leap(points: DewPoints, first: int, others: NDArray[np.intp]) -> Floats:
-    """Return by how much the unknowns of points are off a line through one point, by their slopes; inf for other lines.
-
-    :param points: points of several lines
-    :param first: the number of one
-    :param others: the numbers of those that may follow, shape (m,)
-    """
-    h = (points.log_pressure[others] - points.log_pressure[first])[:, None]
-    straight = 0.5 * h * (points.slope[first] + points.slope[others])
-    off = np.abs(points.unknown[others] - points.unknown[first] - straight)
-    return np.where((off[:, -1] < _SMOOTH) & (off.max(axis=1) < _LEAP), off.max(axis=1), np.inf)
-
-
 def is_one_line(points: DewPoints, first: int, second: int) -> bool:
-    """Return whether two points seem to lie on one line."""
-    return bool(np.isfinite(leap(points, first, np.array([second])))[0])
+    """Return whether two points seem to lie on one line, by their slopes."""
+    h = points.log_pressure[second] - points.log_pressure[first]
+    leap = points.unknown[second] - points.unknown[first] - 0.5 * h * (points.slope[first] + points.slope[second])
+    return bool(abs(leap[-1]) < _SMOOTH and np.abs(leap).max() < _LEAP)

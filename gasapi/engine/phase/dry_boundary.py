@@ -22,7 +22,6 @@ from gasapi.engine.phase.dew_search import (
     follow_dew_line,
     is_one_line,
     joined,
-    leap,
     refine_dew_line,
     search_dew_points,
     solve_dew_points,
@@ -43,7 +42,6 @@ _START: Final = math.log(2e5)
 _ABOVE: Final = 0.02
 """K by which a dew point has to be above the curves to belong to a line of its own."""
 
-_GAPS: Final = np.array([0.25, 0.5, 0.75])
 _SAME_LINE: Final = 0.1
 _STEP: Final = 0.35
 _NEARLY_COLD: Final = 1.06
@@ -60,9 +58,8 @@ _STARTS: Final = 3
 _MOST_DOUBTS: Final = 6
 _RISES: Final = (10.0, 30.0, 80.0)
 _CERTAIN: Final = (0.98, 0.94, 0.88, 0.8, 0.7)
-_COLD_STATES: Final = 16
-_COLD_ALONE: Final = 12
-_COLD_STEPS: Final = 12
+_COLD_STATES: Final = 8
+_COLD_ALONE: Final = 6
 _MARGIN: Final = 1.03
 _COLD_LOG_PRESSURE: Final = math.log(3e7)
 
@@ -127,10 +124,6 @@ class _Search:
         points = search_dew_points(self._system, _NODES, self._lowest)
         if points.temperature.size == 0:
             return DryBoundary((), None, NO_DEW_POINT)
-        # another liquid may form first over the last stretch below the cricondenbar
-        gap: Floats = float(points.log_pressure.max()) + _GAPS * float(_NODES[1] - _NODES[0])
-        if gap[0] < float(_NODES[-1]):
-            points = joined(points, search_dew_points(self._system, gap, self._lowest))
         self._trace(_highest(points))
         doubts: tuple[Doubt, ...] | None = None
         for _ in range(_ROUNDS):
@@ -202,17 +195,12 @@ class _Search:
     def _branch(self, points: DewPoints, start: int) -> Curve:
         """Return the line through a point: through others that were found, in the middle between them, and beyond them."""
         chain = [start]
-        for sign in (-1.0, 1.0):
-            while True:
-                ahead = sign * (points.log_pressure - points.log_pressure[chain[-1]])
-                near = np.flatnonzero((ahead > 1e-9) & (ahead < _FAR))
-                off = leap(points, chain[-1], near)
-                near = near[np.isfinite(off)]
-                if near.size == 0:
-                    break
-                # of the nearest pressure the point that fits best
-                closest = near[ahead[near] < ahead[near].min() + 1e-9]
-                chain.append(int(closest[leap(points, chain[-1], closest).argmin()]))
+        order = np.argsort(points.log_pressure, kind="stable")
+        for sign in (-1, 1):
+            for row in order[::sign].tolist():
+                ahead = sign * (points.log_pressure[row] - points.log_pressure[chain[-1]])
+                if 0.0 < ahead < _FAR and is_one_line(points, chain[-1], row):
+                    chain.append(row)
             chain.reverse()
         line = points.take(np.array(chain))
         if len(chain) > 1:
@@ -283,11 +271,6 @@ class _Search:
             log_p.append(np.array([end + 0.02, end + 0.15]))
             t.append(np.array([top - 0.3, top - 0.3]))
         main = self._main
-        if main is not None and not main.closed and main.log_top - self._shift < float(_NODES[-1]):
-            # what ends the trace may be another liquid that has been the first to form for some time
-            near = main.log_top - self._shift - np.array([0.01, 0.1])
-            log_p.append(near)
-            t.append(self._dew(near) + _OUTSIDE)
         if main is not None and main.closed:
             top = main.log_top - self._shift
             log_p.append(np.array([top + 0.05, top + 0.05, top + 0.4]))
@@ -333,9 +316,7 @@ class _Search:
         top = main.log_top - self._shift
         ladder = np.linspace(float(main.by_pressure(0.0)), self._lowest, _COLD_STATES + 1)
         pressures = np.array([top + 0.05, max(top + 0.5, _COLD_LOG_PRESSURE)])
-        found = screen(
-            self._energy, self._z, np.tile(ladder[1:], 2), np.exp(np.repeat(pressures, _COLD_STATES)), _COLD_ALONE, _COLD_STEPS
-        )
+        found = screen(self._energy, self._z, np.tile(ladder[1:], 2), np.exp(np.repeat(pressures, _COLD_STATES)), _COLD_ALONE)
         split = found.unstable.reshape(2, _COLD_STATES).any(axis=0)
         # up to the next state above the warmest that splits
         cold = float(ladder[int(split.argmax())]) if split.any() else -math.inf

@@ -31,9 +31,7 @@ class Screened(NamedTuple):
     fractions: Floats
 
 
-def screen(
-    energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressure: Floats, alone_most: int = 3, steps: int = _STEPS
-) -> Screened:
+def screen(energy: MixtureEnergy, fractions: Floats, temperature: Floats, pressure: Floats, alone_most: int = 3) -> Screened:
     """Look for a trial phase below the tangent plane of each state.
 
     :param energy: the equation of state
@@ -41,7 +39,6 @@ def screen(
     :param temperature: K, shape (m,)
     :param pressure: Pa, shape (m,)
     :param alone_most: how many nearly pure liquids are among the trials
-    :param steps: substitutions from each trial
     """
     m, n = temperature.size, fractions.size
     log_f = _feed(energy, fractions, temperature, pressure)
@@ -53,7 +50,7 @@ def screen(
         rows = np.flatnonzero(~found & np.isfinite(log_f[:, 0]))
         w = start[rows]
         rho = np.zeros(rows.size)
-        for count in range(steps):
+        for count in range(_STEPS):
             if rows.size == 0:
                 break
             if count == 0:
