@@ -219,7 +219,9 @@ class GasModels:
 
     def _phase_of_generalised(self, model: str, fluid: Fluid) -> PhaseJudge:
         """Return the verdict of the model itself where it has one, else of the best equation that has."""
-        if GENERALISED[model].has_saturation:
+        line = GENERALISED[model]
+        # without interaction parameters the dew line of a mixture is not worth its name, for water by hundreds of kelvin
+        if line.has_saturation and (self.gas.is_pure or line.uses_interaction):
             module = GENERALISED[model].module
             mixture = None
             if not self.gas.is_pure and hasattr(module, "mixture"):
