@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from functools import cached_property
 from typing import Final
@@ -12,12 +13,20 @@ from numpy.typing import NDArray
 from gasapi.engine.elementary import Array
 from gasapi.engine.phase.mixture import DewKind, MixtureFlag, MixturePhase, MixtureVerdict, is_near
 from gasapi.engine.phase.region import Region
+from gasapi.engine.phase.stability import Stability
 from gasapi.service.answers import PhaseWarning
 from gasapi.service.prepared import Margins
 
 __all__ = ["MixtureJudge"]
 
+_GAS: Final = int(Region.GAS)
+_SUPERCRITICAL: Final = int(Region.SUPERCRITICAL)
 _UNKNOWN: Final = int(Region.UNKNOWN)
+_TWO_PHASE: Final = int(Region.TWO_PHASE)
+
+# where the water dew line is not known: how far above the other dew point (or above this temperature, K) water is looked for
+_WATER_REACH: Final = 60.0
+_WATER_NEAR: Final = 400.0
 
 # within these parts of the critical temperature and density an isotherm of a mixture is nearly flat
 _NEAR_TEMPERATURE: Final = 0.02
@@ -97,16 +106,44 @@ class MixtureJudge:
 
     def region_float(self, temperature: float, pressure: float) -> int:
         """Return the region of one state."""
-        return self.phase.at(temperature, pressure).region
+        return self._settled(temperature, pressure, self.phase.at(temperature, pressure)).region
 
     def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool, object]:
         """Return region and nearness to the dew point of one state."""
-        verdict = self.phase.at(temperature, pressure)
+        verdict = self._settled(temperature, pressure, self.phase.at(temperature, pressure))
         return verdict.region, is_near(verdict, pressure, margin), verdict
 
     def survey_block(self, temperature: Array, pressure: Array, margin: float) -> tuple[NDArray[np.int8], NDArray[np.bool_]]:
         """Return regions and nearness of rows, each of shape (n,)."""
-        return self.phase.survey_block(temperature, pressure, margin)
+        region, near = self.phase.survey_block(temperature, pressure, margin)
+        if self._lost_water < math.inf:
+            region, near = region.copy(), near.copy()
+            for i in np.flatnonzero((pressure > self._lost_water) & (region <= _SUPERCRITICAL)).tolist():
+                t, p = float(temperature[i]), float(pressure[i])
+                found = self._settled(t, p, self.phase.at(t, p))
+                region[i], near[i] = found.region, is_near(found, p, margin)
+        return region, near
+
+    @cached_property
+    def _lost_water(self) -> float:
+        """The pressure, Pa, above which the water dew line was lost; infinite where it was not."""
+        return math.exp(min(700.0, self.phase.log_pressure_of_lost_water())) if self._has_water else math.inf
+
+    @cached_property
+    def _has_water(self) -> bool:
+        return self.phase.log_pressure_of_lost_water() < math.inf
+
+    def _settled(self, temperature: float, pressure: float, verdict: MixtureVerdict) -> MixtureVerdict:
+        """Return a verdict that a gas is one phase only if a direct test says so too, where the water dew line is not known."""
+        if pressure <= self._lost_water or verdict.region not in (_GAS, _SUPERCRITICAL):
+            return verdict
+        dew = verdict.dew_point_temperature
+        if temperature > (_WATER_NEAR if dew is None else dew) + _WATER_REACH:
+            return verdict
+        found = self.phase.stability(temperature, pressure).verdict
+        if found == Stability.STABLE:
+            return verdict
+        return verdict._replace(region=_TWO_PHASE if found == Stability.UNSTABLE else _UNKNOWN)
 
     def refine_float(self, temperature: float, pressure: float, density: float, region: int) -> int:
         """Return the region as surveyed, which took the density at the critical isochore into account."""

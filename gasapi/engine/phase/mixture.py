@@ -642,6 +642,12 @@ class MixturePhase:
 
     # what a series asks
 
+    def log_pressure_of_lost_water(self) -> float:
+        """Return ln p, p in Pa, above which the water dew line of a gas with water is not known; infinite without water."""
+        if not self._wet:
+            return math.inf
+        return -math.inf if self._water_gas is None else self._water_gas.high
+
     def survey_float(self, temperature: float, pressure: float, margin: float) -> tuple[int, bool]:
         """Return the region of one state, and whether it is one phase close to where another appears; see ``is_near``.
 
