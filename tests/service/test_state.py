@@ -369,7 +369,7 @@ def test_pressures_at_the_ends_of_a_double_are_bad_and_never_raise(ask, pressure
 
 @pytest.mark.parametrize(("water", "temperature", "pressure"), [(0.002, 303.0, 6e6), (0.001, 291.09, 4.5e6)])
 def test_water_condenses_from_dense_carbon_dioxide_before_it_condenses_itself(ask, water, temperature, pressure):
-    """Where the water dew line is not known, a direct test decides; unstable by an independent GERG-2008 tangent-plane distance."""
+    """A direct test decides; unstable by the tangent-plane distance of an independent GERG-2008 too."""
     answer = ask({"carbon-dioxide": 1.0 - water, "water": water}, temperature, pressure)
     assert (answer.phase.region, answer.quality.level) == ("two-phase", "bad")
     assert ask({"carbon-dioxide": 1.0 - water, "water": water}, temperature + 30.0, pressure).quality.level == "good"
